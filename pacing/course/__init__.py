@@ -1,0 +1,1 @@
+"""The course: file, track, repair, grid, bends and pieces."""
