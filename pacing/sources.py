@@ -82,7 +82,7 @@ SOURCES: dict[str, Source] = {
         "Int J Sports Physiol Perform 12:825-830",
     ),
     "mattioni-2018": Source(
-        "Mattioni Maturana, Fontana, Pogliaghi, Passfield, Murias",
+        "Mattioni Maturana, Fontana, Pogliaghi and others",
         2018,
         "Critical power: how different protocols and models affect its determination",
         "J Sci Med Sport 21:742-747",
@@ -108,43 +108,47 @@ SOURCES: dict[str, Source] = {
     "weigend-2022": Source(
         "Weigend, Clarke, Obst",
         2022,
-        "A hydraulic model outperforms work-balance models for predicting recovery kinetics from intermittent exercise",
+        "A hydraulic model outperforms work-balance models for predicting recovery kinetics "
+        "from intermittent exercise",
         "Ann Oper Res",
     ),
     "ferguson-2010": Source(
-        "Ferguson, Rossiter, Whipp, Cathcart, Murgatroyd, Ward",
+        "Ferguson, Rossiter, Whipp and others",
         2010,
-        "Effect of recovery duration from prior exhaustive exercise on the parameters of the power-duration relationship",
+        "Effect of recovery duration from prior exhaustive exercise on the parameters of the "
+        "power-duration relationship",
         "J Appl Physiol 108:866-874",
     ),
     "caen-2019": Source(
-        "Caen, Bourgois, Bourgois, Van der Stede, Vermeire, Boone",
+        "Caen, Bourgois, Bourgois and others",
         2019,
         "The reconstitution of W′ depends on both work and recovery characteristics",
         "Med Sci Sports Exerc 51(8):1745-1751",
     ),
     "caen-2021": Source(
-        "Caen, Bourgois, Dauwe, Blancquaert, Vermeire, Lievens, Van Dorpe, Derave, Bourgois, Pringels, Boone",
+        "Caen, Bourgois, Dauwe and others",
         2021,
-        "W′ recovery kinetics after exhaustion: a two-phase exponential process influenced by aerobic fitness",
+        "W′ recovery kinetics after exhaustion: a two-phase exponential process influenced "
+        "by aerobic fitness",
         "Med Sci Sports Exerc 53(9):1911-1921",
     ),
     "chidnok-2012": Source(
-        "Chidnok, Dimenna, Bailey, Vanhatalo, Morton, Wilkerson, Jones",
+        "Chidnok, Dimenna, Bailey and others",
         2012,
         "Exercise tolerance in intermittent cycling: application of the critical power concept",
         "Med Sci Sports Exerc 44(5):966-976",
     ),
     "clark-2018": Source(
-        "Clark, Vanhatalo, Bailey, Wylie, Kirby, Wilkins, Jones",
+        "Clark, Vanhatalo, Bailey and others",
         2018,
         "Effects of two hours of heavy-intensity exercise on the power-duration relationship",
         "Med Sci Sports Exerc 50(8):1658-1668",
     ),
     "clark-2019": Source(
-        "Clark, Vanhatalo, Thompson, Joseph, Black, Blackwell, Wylie, Tan, Bailey, Wilkins, Kirby, Jones",
+        "Clark, Vanhatalo, Thompson and others",
         2019,
-        "Dynamics of the power-duration relationship during prolonged endurance exercise and influence of carbohydrate ingestion",
+        "Dynamics of the power-duration relationship during prolonged endurance exercise and "
+        "influence of carbohydrate ingestion",
         "Am J Physiol Regul 317:R59-R67",
     ),
     "bassett-1999": Source(
