@@ -1,0 +1,256 @@
+"""Speed along the course for given rider power: Newton on all cells at once.
+
+State is E = v²/2 at the nodes, distance the independent variable. In every cell
+
+    m_eff (E₁ − E₀) = η P dt − h (R(v₀) + R(v₁))/2 − h·braking,    dt = 2 h/(v₀ + v₁),
+
+a lower-bidiagonal system. Which equation holds at a node is part of the solution: the power
+asked for, no power above spin-out, exactly the spin-out speed, or exactly the speed limit.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from enum import IntEnum
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.linalg.lapack import dtbtrs
+from scipy.signal import lfilter
+
+from pacing.errors import OurFaultError
+from pacing.motion.road import Road
+
+Array = NDArray[np.float64]
+
+FLOOR_M_S = 1.0
+"""Below this a bicycle cannot be ridden upright; a node here has stalled (common practice)."""
+
+MOST_ITERATIONS = 60
+
+
+class Mode(IntEnum):
+    """Which equation decides the speed at the end of a cell."""
+
+    POWER = 0
+    TRACTION = 1
+    COAST = 2
+    SPIN_OUT = 3
+    LIMIT = 4
+    FLOOR = 5
+
+
+@dataclass(frozen=True)
+class Motion:
+    """A ride: at nodes (N+1,) ``speed_m_s``; per cell (N,) the rest.
+
+    ``power_w`` is what the rider puts out, ``braking_n`` the mean braking force, ``mode`` the
+    equation that decided the speed at the cell's end (`Mode`).
+    """
+
+    speed_m_s: Array
+    time_s: Array
+    power_w: Array
+    braking_n: Array
+    mode: NDArray[np.int8]
+
+    @property
+    def total_s(self) -> float:
+        """Time of the whole ride."""
+        return float(self.time_s.sum())
+
+    @property
+    def elapsed_s(self) -> Array:
+        """Time at the nodes (N+1,)."""
+        return np.concatenate([[0.0], np.cumsum(self.time_s)])
+
+    @property
+    def stalled_cells(self) -> NDArray[np.intp]:
+        """Cells the rider cannot get through upright."""
+        return np.flatnonzero(self.mode == Mode.FLOOR)
+
+
+@dataclass(frozen=True)
+class CellSlopes:
+    """Linearised motion per cell (N,): ``to`` dE₁ + ``start`` dE₀ = ``power`` dP."""
+
+    to: Array
+    start: Array
+    power: Array
+
+
+def solve_bidiagonal(diagonal: Array, below: Array, right: Array) -> Array:
+    """x with diagonal_i x_i + below_i x_(i−1) = right_i; ``below[0]`` is not used.
+
+    ``right`` (N,) or (N, k).
+    """
+    band = np.empty((2, diagonal.size))
+    band[0] = diagonal
+    band[1, :-1] = below[1:]
+    x, info = dtbtrs(band, right, uplo="L")
+    if info != 0:
+        raise OurFaultError("The linearised motion is singular.")
+    return x
+
+
+def _linearise(
+    road: Road, target_w: Array, energy: Array
+) -> tuple[Array, CellSlopes, NDArray[np.int8]]:
+    """Residual, its slopes and the deciding mode of each cell, all scaled by the mass."""
+    speed = np.sqrt(2.0 * energy)
+    v0, v1 = speed[:-1], speed[1:]
+    mass, cell = road.effective_mass_kg, road.cell_m
+    r0, r0_slope = road.resistance_n_and_slope(v0)
+    r1, r1_slope = road.resistance_n_and_slope(v1)
+    v0_safe = np.maximum(v0, 1e-3)
+    half = 0.5 * cell / mass
+    coast = energy[1:] - energy[:-1] + half * (r0 + r1)
+    to = 1.0 + half * r1_slope / v1
+    start = -1.0 + half * r0_slope / v0_safe
+
+    total = v0 + v1
+    per_watt = road.efficiency * 2.0 * cell / (mass * total)
+    work = per_watt * target_w
+    most = road.traction_n * cell / mass
+    slipping = work > most
+    drive = np.where(slipping, most, work)
+    drive_slope = np.where(slipping, 0.0, work / total)
+    powered = coast - drive
+
+    # v1 = max(floor, min(limit, max(coast, min(powered, spin-out)))), told by residuals
+    e1 = energy[1:]
+    spin = e1 - 0.5 * road.spin_out_m_s**2
+    limit = e1 - 0.5 * road.limit_m_s[1:] ** 2
+    floor = e1 - 0.5 * FLOOR_M_S**2
+    spinning = spin > powered
+    below = np.where(spinning, spin, powered)
+    coasting = coast < below
+    below = np.where(coasting, coast, below)
+    limited = limit > below
+    below = np.where(limited, limit, below)
+    floored = floor < below
+
+    mode = np.where(slipping, Mode.TRACTION, Mode.POWER).astype(np.int8)
+    mode[spinning] = Mode.SPIN_OUT
+    mode[coasting] = Mode.COAST
+    mode[limited] = Mode.LIMIT
+    mode[floored] = Mode.FLOOR
+    residual = np.where(floored, floor, below)
+
+    driven = mode <= Mode.TRACTION
+    moving = driven | (mode == Mode.COAST)
+    slopes = CellSlopes(
+        to=np.where(moving, to + np.where(driven, drive_slope / v1, 0.0), 1.0),
+        start=np.where(moving, start + np.where(driven, drive_slope / v0_safe, 0.0), 0.0),
+        power=np.where(mode == Mode.POWER, per_watt, 0.0),
+    )
+    return residual, slopes, mode
+
+
+def simulate_motion(
+    road: Road, target_w: Array, *, start_speed_m_s: float, guess_m_s: Array | None = None
+) -> Motion:
+    """Ride ``road`` holding ``target_w`` (N,), rider power, wherever speed and grip allow.
+
+    ``guess_m_s`` (N+1,) is a nearby ride's speed; it changes the effort, not the answer. Nodes
+    where the rider cannot stay upright are kept at a walking pace and marked `Mode.FLOOR`.
+
+    Raises
+    ------
+    OurFaultError
+        If the speeds cannot be found.
+    """
+    motion, _ = simulate_motion_and_slopes(
+        road, target_w, start_speed_m_s=start_speed_m_s, guess_m_s=guess_m_s
+    )
+    return motion
+
+
+def simulate_motion_and_slopes(
+    road: Road, target_w: Array, *, start_speed_m_s: float, guess_m_s: Array | None = None
+) -> tuple[Motion, CellSlopes]:
+    """As `simulate_motion`, with the motion linearised about the ride (for exact derivatives)."""
+    start_energy = 0.5 * min(start_speed_m_s, float(road.limit_m_s[0])) ** 2
+    if guess_m_s is None:
+        energy = _march(road, target_w, start_energy)
+    else:
+        energy = 0.5 * guess_m_s**2
+        energy[0] = start_energy
+    for attempt in range(2):
+        found = _newton(road, target_w, energy)
+        if found is not None:
+            energy, slopes, mode = found
+            return _ride(road, target_w, energy, mode), slopes
+        if attempt == 0:
+            energy = _march(road, target_w, start_energy)
+    raise OurFaultError("The speeds along the course could not be found.")
+
+
+def _newton(
+    road: Road, target_w: Array, energy: Array
+) -> tuple[Array, CellSlopes, NDArray[np.int8]] | None:
+    energy = energy.copy()
+    last_mode = None
+    for _ in range(MOST_ITERATIONS):
+        residual, slopes, mode = _linearise(road, target_w, energy)
+        step = solve_bidiagonal(slopes.to, slopes.start, residual)
+        trial = energy[1:] - step
+        # an energy may fall to a tenth at most, so that speeds stay positive
+        energy[1:] = np.maximum(trial, 0.1 * energy[1:])
+        if last_mode is not None and np.array_equal(mode, last_mode):
+            worst = float(np.max(np.abs(step) / (1.0 + energy[1:])))
+            if worst < 1e-9:
+                return energy, slopes, mode
+        last_mode = mode
+    return None
+
+
+def _march(road: Road, target_w: Array, start_energy: float) -> Array:
+    """A first guess: quasi-steady speeds smoothed by the rider's inertia, within the limits."""
+    speed = np.minimum(road.limit_m_s, 10.0)
+    steady = 0.5 * (speed[1:] + speed[:-1])
+    for _ in range(25):
+        force, slope = road.resistance_n_and_slope(steady)
+        wanted = road.efficiency * target_w
+        error = force * steady - wanted
+        derivative = force + slope * steady
+        step = error / np.where(derivative > 5.0, derivative, 5.0)
+        steady = np.clip(steady - np.clip(step, -3.0, 3.0), 1.5, 30.0)
+    decay = float(np.exp(-np.mean(road.cell_m) / 150.0))
+    smoothed = lfilter([1.0 - decay], [1.0, -decay], steady, zi=[decay * steady[0]])[0]
+    energy = np.concatenate([[start_energy], 0.5 * smoothed**2])
+    limit = 0.5 * road.limit_m_s[1:] ** 2
+    energy[1:] = np.minimum(energy[1:], limit)
+    return energy
+
+
+def _ride(road: Road, target_w: Array, energy: Array, mode: NDArray[np.int8]) -> Motion:
+    """Power, braking and time in each cell from the speeds found."""
+    speed = np.sqrt(2.0 * energy)
+    v0, v1 = speed[:-1], speed[1:]
+    time = 2.0 * road.cell_m / (v0 + v1)
+    needed_w = _needed_work_j(road, energy, speed) / (road.efficiency * time)
+    held = (mode == Mode.SPIN_OUT) | (mode == Mode.LIMIT)
+    power = np.where(held, np.clip(needed_w, 0.0, target_w), target_w)
+    power = np.where(mode == Mode.COAST, 0.0, power)
+    power = np.where(
+        mode == Mode.TRACTION,
+        np.minimum(target_w, road.traction_n * road.cell_m / (road.efficiency * time)),
+        power,
+    )
+    spare_j = road.efficiency * (power - needed_w) * time
+    braking = np.where(mode == Mode.LIMIT, np.maximum(spare_j, 0.0) / road.cell_m, 0.0)
+    return Motion(speed_m_s=speed, time_s=time, power_w=power, braking_n=braking, mode=mode)
+
+
+def _needed_work_j(road: Road, energy: Array, speed: Array) -> Array:
+    """Work at the wheel that the found speeds ask of each cell."""
+    r0, _ = road.resistance_n_and_slope(speed[:-1])
+    r1, _ = road.resistance_n_and_slope(speed[1:])
+    gain = road.effective_mass_kg * (energy[1:] - energy[:-1])
+    return gain + 0.5 * road.cell_m * (r0 + r1)
+
+
+def with_limit(road: Road, limit_m_s: Array) -> Road:
+    """The same road under other speed limits (N+1,)."""
+    return replace(road, limit_m_s=limit_m_s)

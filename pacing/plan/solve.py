@@ -1,0 +1,196 @@
+"""Sequential quadratic programming (SLSQP) over piece powers, with exact gradients."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.optimize import brentq, minimize
+
+from pacing.errors import CannotBeRiddenError
+from pacing.plan.problem import Cuts, Problem, Ride, ride
+
+Array = NDArray[np.float64]
+
+MOST_ITERATIONS = 300
+TIME_TOLERANCE_S = 1e-5
+JOULES_PER_UNIT = 1000.0
+
+
+@dataclass(frozen=True)
+class Solution:
+    """What SLSQP found, and how far it is from the conditions of an optimum.
+
+    ``kkt_residual`` is the largest slope of the Lagrangian along any power not at its bound, in
+    seconds per standard step of that power (order one where nothing is optimal).
+    """
+
+    ride: Ride
+    status: int
+    message: str
+    iterations: int
+    evaluations: int
+    multipliers_s_per_j: Array
+    kkt_residual: float
+
+
+@dataclass
+class _Memory:
+    """The last candidate ridden, so that value and slopes of one point are found once."""
+
+    problem: Problem
+    starts: Cuts
+    base_w: Array
+    step_w: Array
+    last: Ride
+    evaluations: int = 0
+    x: Array = field(default_factory=lambda: np.empty(0))
+
+    def at(self, x: Array) -> Ride:
+        if self.x.size != x.size or not np.array_equal(self.x, x):
+            power = self.base_w + self.step_w * x
+            self.last = ride(
+                self.problem, self.starts, power, guess_m_s=self.last.motion.speed_m_s
+            )
+            self.x = x.copy()
+            self.evaluations += 1
+        return self.last
+
+
+def power_bounds_w(problem: Problem, ridden: Ride) -> tuple[Array, Array]:
+    """Lowest and highest power of each piece (n,): the pieces of the first 30 s have their own."""
+    starts = ridden.starts
+    low = np.full(starts.size, problem.min_power_w)
+    high = np.full(starts.size, problem.max_power_w)
+    early = ridden.motion.elapsed_s[starts] < 30.0
+    early[0] = problem.start_speed_m_s < 1.0 or bool(early[0])
+    high[early] = np.minimum(high[early], problem.first_30_s_max_w)
+    return low, np.maximum(low, high)
+
+
+def standard_step_w(ridden: Ride) -> Array:
+    """A step of each power (n,) that changes the Lagrangian's slope by about one second.
+
+    From quasi-steady level riding, where time goes with power to the −1/3: the Lagrangian's
+    second derivative in a piece of T seconds at P watts is about T/(3 P²).
+    """
+    power = np.maximum(ridden.power_w, 0.5 * float(np.mean(ridden.power_w)))
+    return power * np.sqrt(3.0 / np.maximum(ridden.piece_time_s, 1.0))
+
+
+def margins_j(ridden: Ride) -> Array:
+    """What has to stay above zero: W′ over the reserve, in each piece or at the finish."""
+    if ridden.problem.reserve_everywhere:
+        return ridden.lowest.lowest_j - ridden.problem.reserve_j
+    return ridden.lowest.end_j[-1:] - ridden.problem.reserve_j
+
+
+def _margin_slopes(ridden: Ride) -> Array:
+    if ridden.problem.reserve_everywhere:
+        return ridden.lowest.lowest_slopes
+    return ridden.lowest.end_slopes[-1:]
+
+
+def _peak_margins_w(ridden: Ride) -> tuple[Array, Array]:
+    """Room below CP + (Pmax − CP) W/W′ at each piece's lowest W′, and its slopes."""
+    problem, starts = ridden.problem, ridden.starts
+    assert problem.peak_power_w is not None
+    share, cp = problem.power_share[starts], problem.critical_power_w[starts]
+    per_joule = (problem.peak_power_w - cp) / problem.w_prime_j
+    room = cp + per_joule * ridden.lowest.lowest_j - ridden.power_w / share
+    slopes = per_joule[:, None] * ridden.lowest.lowest_slopes - np.diag(1.0 / share)
+    return room, slopes
+
+
+def solve(
+    problem: Problem,
+    starts: Cuts,
+    power_w: Array,
+    *,
+    guess_m_s: Array | None = None,
+    tolerance_s: float = TIME_TOLERANCE_S,
+) -> Solution:
+    """Find the piece powers (n,) of least time from the starting powers ``power_w`` (n,)."""
+    first = ride(problem, starts, power_w, guess_m_s=guess_m_s)
+    low, high = power_bounds_w(problem, first)
+    base = np.clip(power_w, low, high)
+    step = standard_step_w(first)
+    memory = _Memory(problem, starts, base, step, first)
+    constraints = [
+        {
+            "type": "ineq",
+            "fun": lambda x: margins_j(memory.at(x)) / JOULES_PER_UNIT,
+            "jac": lambda x: _margin_slopes(memory.at(x)) * step / JOULES_PER_UNIT,
+        }
+    ]
+    if problem.peak_power_w is not None:
+        constraints.append(
+            {
+                "type": "ineq",
+                "fun": lambda x: _peak_margins_w(memory.at(x))[0] / step,
+                "jac": lambda x: _peak_margins_w(memory.at(x))[1] * step / step[:, None],
+            }
+        )
+    result = minimize(
+        lambda x: (memory.at(x).motion.total_s, memory.at(x).time_slopes * step),
+        np.zeros(starts.size),
+        jac=True,
+        method="SLSQP",
+        bounds=list(zip((low - base) / step, (high - base) / step, strict=True)),
+        constraints=constraints,
+        options={"maxiter": MOST_ITERATIONS, "ftol": tolerance_s},
+    )
+    best = memory.at(np.asarray(result.x))
+    multipliers = np.asarray(result.multipliers)
+    return Solution(
+        ride=best,
+        status=int(result.status),
+        message=str(result.message),
+        iterations=int(result.nit),
+        evaluations=memory.evaluations,
+        multipliers_s_per_j=multipliers[: margins_j(best).size] / JOULES_PER_UNIT,
+        kkt_residual=_kkt_residual(best, multipliers, constraints, result.x, step, low, high),
+    )
+
+
+def _kkt_residual(
+    best: Ride, multipliers: Array, constraints: list, x: Array, step: Array, low: Array, high: Array
+) -> float:
+    jacobian = np.concatenate([constraint["jac"](x) for constraint in constraints])
+    slope = best.time_slopes * step - multipliers @ jacobian
+    at_low = best.power_w <= low + 1e-6 * step
+    at_high = best.power_w >= high - 1e-6 * step
+    slope = np.where(at_low, np.minimum(slope, 0.0), slope)
+    slope = np.where(at_high, np.maximum(slope, 0.0), slope)
+    return float(np.max(np.abs(slope)))
+
+
+def best_constant(problem: Problem) -> Ride:
+    """The highest constant target that keeps the reserve under the same limits.
+
+    Raises
+    ------
+    CannotBeRiddenError
+        If no constant target within the bounds keeps it.
+    """
+    start = np.zeros(1, dtype=np.intp)
+    memory: dict[str, Ride] = {}
+
+    def margin(power: float) -> float:
+        guess = memory["last"].motion.speed_m_s if memory else None
+        memory["last"] = ride(problem, start, np.array([power]), guess_m_s=guess)
+        return float(np.min(margins_j(memory["last"])))
+
+    low = max(problem.min_power_w, 1.0)
+    if margin(problem.max_power_w) >= 0.0:
+        return memory["last"]
+    if margin(low) < 0.0:
+        raise CannotBeRiddenError(
+            f"The reserve of {problem.reserve_j / 1000:.1f} kJ cannot be kept even at the lowest "
+            f"power of {low:.0f} W. Lower plan.min_power_w or plan.reserve_kj."
+        )
+    power = float(brentq(margin, low, problem.max_power_w, xtol=1e-4))
+    while margin(power) < 0.0:
+        power -= 1e-4
+    return memory["last"]
