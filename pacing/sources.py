@@ -157,4 +157,10 @@ SOURCES: dict[str, Source] = {
         "Comparing cycling world hour records, 1967-1996: modeling with empirical data",
         "Med Sci Sports Exerc 31(11):1665-1676",
     ),
+    "wgs84": Source(
+        "National Imagery and Mapping Agency",
+        2000,
+        "Department of Defense World Geodetic System 1984, its definition and relationships",
+        "NIMA TR8350.2, 3rd edition, chapter 3",
+    ),
 }
