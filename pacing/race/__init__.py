@@ -3,5 +3,6 @@
 from pacing.race.build import build
 from pacing.race.race import PlanSettings, Race, Uncertainty
 from pacing.race.read import load_race
+from pacing.race.vary import vary
 
-__all__ = ["PlanSettings", "Race", "Uncertainty", "build", "load_race"]
+__all__ = ["PlanSettings", "Race", "Uncertainty", "build", "load_race", "vary"]

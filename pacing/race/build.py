@@ -13,7 +13,8 @@ from pacing.course.course import Course, CourseSpec
 from pacing.errors import UnusableInputError
 from pacing.race.check import Checked
 from pacing.race.complete import completed
-from pacing.race.origin import Origins
+from pacing.race.option_list import checked_options
+from pacing.race.origin import Origins, path_of
 from pacing.race.race import PlanSettings, Race, Uncertainty
 from pacing.race.value import clock_s
 from pacing.rider import Position, Rider
@@ -29,10 +30,10 @@ def build(
     """
     checked = Checked(given, origins)
     table = completed(checked.table(), checked)
-    options = given.get("options", [])
     if course is None:
-        course = load_course(_spec(table["course"], file))
+        course = _course(table["course"], file, origins)
     _fill_heights(table["air"], float(course.elevation_m[0]))
+    options = checked_options(given, origins, filled=table)
     return Race(
         course=course,
         rider=_rider(table["rider"], origins),
@@ -40,12 +41,25 @@ def build(
         day=_day(table["air"]),
         plan=_settings(table["plan"]),
         uncertainty=Uncertainty(**table["uncertainty"]),
-        options=tuple(options),
+        options=options,
         inputs=_echo(table, options),
         file=file,
         cautions=(*checked.cautions, *course.report.cautions),
         given=given,
     )
+
+
+def _course(course: dict[str, Any], file: Path, origins: Origins) -> Course:
+    """The course; an error about one of its keys is told as one about the race file."""
+    try:
+        return load_course(_spec(course, file))
+    except UnusableInputError as problem:
+        if problem.file is not None or not problem.key:
+            raise
+        path = path_of(problem.key.split(",")[0])
+        raise origins.error(
+            path, problem.found, expected=problem.expected, mend=problem.mend
+        ) from None
 
 
 def _spec(course: dict[str, Any], file: Path) -> CourseSpec:
@@ -142,7 +156,7 @@ def _seconds(clock: str) -> float:
     return clock_s(clock, (), Origins(), "a clock")
 
 
-def _echo(table: dict[str, Any], options: list[Any]) -> dict[str, Any]:
+def _echo(table: dict[str, Any], options: tuple[Any, ...]) -> dict[str, Any]:
     """The race with every default filled in, in the shape of the race file."""
     echo = {name: dict(section) for name, section in table.items()}
     for name in ("rider", "bike", "air"):

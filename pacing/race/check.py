@@ -8,7 +8,7 @@ from typing import Any
 from pacing.race.keys import LIST_MARK, NOT_YET, Key, lists_of, sections
 from pacing.race.lines import Path
 from pacing.race.nearest import did_you_mean, did_you_mean_key
-from pacing.race.origin import Origins, dotted, shown
+from pacing.race.origin import Origins, dotted, path_of, shown
 from pacing.race.value import checked_value
 
 TOP = ("course", "rider", "bike", "air", "plan", "uncertainty", "options")
@@ -45,7 +45,7 @@ class Checked:
         for key, refused, reason in NOT_YET:
             path: Path = ()
             value: Any = self.given
-            for part in _parts(key):
+            for part in path_of(key):
                 value = _inside(value, part)
                 path += (part,)
             if value is not None and refused in (None, value):
@@ -139,16 +139,6 @@ def without_rivals(base: Mapping[str, Any], beside: Mapping[str, Any]) -> dict[s
 
 def _replaced(name: str, given: Mapping[str, Any]) -> bool:
     return name == "pressure_hpa" and given.get("station_pressure_hpa") is not None
-
-
-def _parts(key: str) -> list[str | int]:
-    parts: list[str | int] = []
-    for word in key.split("."):
-        name, _, number = word.partition("[")
-        parts.append(name)
-        if number:
-            parts.append(int(number.rstrip("]")))
-    return parts
 
 
 def _inside(value: Any, part: str | int) -> Any:

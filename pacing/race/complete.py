@@ -118,7 +118,10 @@ def _held_w(rider: Mapping[str, Any]) -> float:
 def _bike(bike: dict[str, Any], checked: Checked) -> None:
     given = checked.given.get("bike", {})
     numbers = [name for name in ("bearing_n", "bearing_n_per_m_s") if given.get(name) is not None]
-    if numbers and given.get("bearing_drag") is not None:
+    words = given.get("bearing_drag")
+    if words is not None and (bike["bearing_n"], bike["bearing_n_per_m_s"]) == BEARINGS[words]:
+        return
+    if numbers and words is not None:
         raise checked.origins.error(
             ("bike", "bearing_drag"),
             f"given beside {' and '.join(numbers)}",

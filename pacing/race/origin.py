@@ -75,6 +75,15 @@ def dotted(path: Path) -> str:
     return text
 
 
+def path_of(name: str) -> Path:
+    """The path of a simple dotted name, ``rider.positions[0].name``: `dotted` undone."""
+    path: Path = ()
+    for word in name.split("."):
+        part, _, number = word.partition("[")
+        path += (part, int(number.rstrip("]"))) if number else (part,)
+    return path
+
+
 def quoted(text: str) -> str:
     """Text in quotes, shortened, with nothing in it that a terminal would obey."""
     short = text if len(text) <= LONGEST_SHOWN else text[: LONGEST_SHOWN - 1] + "…"
