@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from pacing.motion.simulate import Mode, Motion
 from pacing.motion.slopes import PieceSlopes
-from pacing.rider.budget import RecoveryLaw
+from pacing.rider.budget import Advance, RecoveryLaw
 
 Array = NDArray[np.float64]
 
@@ -122,41 +122,123 @@ def lowest_in_pieces(
     lowest, ends = np.empty(count), np.empty(count)
     lowest_slopes, end_slopes = np.empty((count, count)), np.empty((count, count))
     for k in range(count):
-        # local slopes of the pools in (own power, entry energy, pools at entry)
-        local = [[0.0, 0.0, *(1.0 if i == j else 0.0 for j in range(size))] for i in range(size)]
-        low, low_local = sum(pools) + 1.0, None
+        low, low_local, local = 0.0, None, None
         for r in range(first_run[k], first_run[k + 1]):
             step = law.advance_and_slopes(pools, excess[r], duration[r], w_prime_j=w_prime_j)
             pools = step.pools
-            width = size + 2
-            local = [
-                [
-                    sum(step.d_pools[i][j] * local[j][c] for j in range(size))
-                    + (
-                        step.d_excess[i] * by_power[r][c] + step.d_duration[i] * by_time[r][c]
-                        if c < 2
-                        else 0.0
-                    )
-                    for c in range(width)
-                ]
-                for i in range(size)
-            ]
+            local = _through(step, local, by_power[r], by_time[r])
             left = sum(pools)
             if low_local is None or left < low:
-                low = left
-                low_local = [sum(row[c] for row in local) for c in range(width)]
-        jacobian = _spread(np.array(local), slopes.entry_energy[k], entry_jacobian, k)
+                low, low_local = left, local
+        jacobian = _spread(local, slopes.entry_energy[k], entry_jacobian, k)
         lowest[k], ends[k] = low, sum(pools)
-        lowest_slopes[k] = _spread(
-            np.array([low_local]), slopes.entry_energy[k], entry_jacobian, k
-        )[0]
         end_slopes[k] = jacobian.sum(axis=0)
+        if low_local is local:
+            lowest_slopes[k] = end_slopes[k]
+        else:
+            at_low = _spread(low_local, slopes.entry_energy[k], entry_jacobian, k)
+            lowest_slopes[k] = at_low.sum(axis=0)
         entry_jacobian = jacobian
     return Lowest(lowest, ends, lowest_slopes, end_slopes)
 
 
-def _spread(local: Array, entry_energy: Array, entry_jacobian: Array, piece: int) -> Array:
-    """Turn slopes in (own power, entry energy, entry pools) into slopes in all powers."""
-    rows = np.outer(local[:, 1], entry_energy) + local[:, 2:] @ entry_jacobian
-    rows[:, piece] += local[:, 0]
+Local = list[list[float]]
+"""Slopes of each pool in (own power, entry energy, pools at the piece's entry)."""
+
+
+def _through(step: Advance, local: Local | None, power: list[float], time: list[float]) -> Local:
+    """Chain one run onto the slopes of the runs before it in the piece."""
+    own, entry = power[0], power[1]
+    by_own, by_entry = time[0], time[1]
+    rows = []
+    for d_pools, excess, duration in zip(
+        step.d_pools, step.d_excess, step.d_duration, strict=True
+    ):
+        row = [excess * own + duration * by_own, excess * entry + duration * by_entry]
+        if local is None:
+            row += d_pools
+        else:
+            for j, slope in enumerate(d_pools):
+                row[0] += slope * local[j][0]
+                row[1] += slope * local[j][1]
+            row += [
+                sum(slope * local[j][c] for j, slope in enumerate(d_pools))
+                for c in range(2, 2 + len(d_pools))
+            ]
+        rows.append(row)
     return rows
+
+
+def _spread(local: Local, entry_energy: Array, entry_jacobian: Array, piece: int) -> Array:
+    """Turn slopes in (own power, entry energy, entry pools) into slopes in all powers (k, n)."""
+    rows = np.empty_like(entry_jacobian)
+    for i, (own, entry, *pools) in enumerate(local):
+        row = entry * entry_energy
+        for j, slope in enumerate(pools):
+            row += slope * entry_jacobian[j]
+        row[piece] += own
+        rows[i] = row
+    return rows
+
+
+class Prices(NamedTuple):
+    """What the optimum pays: seconds a joule is worth, seen from each cell (N,).
+
+    ``per_w`` is the slope of Σ multiplier · lowest W′ in the delivered power of the cell,
+    ``per_s`` in the time spent in it.
+    """
+
+    per_w: Array
+    per_s: Array
+
+
+def prices(
+    law: RecoveryLaw,
+    motion: Motion,
+    *,
+    starts: NDArray[np.intp],
+    excess_w: Array,
+    power_share: Array,
+    w_prime_j: float,
+    multipliers: Array,
+    at_lowest: bool = True,
+    start_j: float | None = None,
+) -> Prices:
+    """Slopes of Σ multiplier · W′ in every cell's power and time, by one backward pass.
+
+    ``multipliers`` (n,) weigh each piece's lowest W′, or (1,) the last with ``at_lowest`` False.
+    """
+    runs = runs_of(motion, starts=starts, excess_w=excess_w)
+    pools = law.full(w_prime_j)
+    if start_j is not None:
+        pools = tuple(pool * start_j / w_prime_j for pool in pools)
+    steps = []
+    for excess, duration in zip(runs.excess_w.tolist(), runs.duration_s.tolist(), strict=True):
+        steps.append(law.advance_and_slopes(pools, excess, duration, w_prime_j=w_prime_j))
+        pools = steps[-1].pools
+    left = np.array([sum(step.pools) for step in steps])
+    weight = np.zeros(left.size)
+    if at_lowest:
+        first_run = np.searchsorted(runs.piece, np.arange(starts.size))
+        for k, (a, b) in enumerate(
+            zip(first_run, np.append(first_run[1:], left.size), strict=True)
+        ):
+            weight[a + int(np.argmin(left[a:b]))] += multipliers[k]
+    else:
+        weight[-1] = multipliers[-1]
+
+    size = len(pools)
+    value = [0.0] * size
+    by_excess, by_time = np.empty(left.size), np.empty(left.size)
+    for r in range(left.size - 1, -1, -1):
+        value = [v + float(weight[r]) for v in value]
+        step = steps[r]
+        by_excess[r] = sum(value[i] * step.d_excess[i] for i in range(size))
+        by_time[r] = sum(value[i] * step.d_duration[i] for i in range(size))
+        value = [sum(value[i] * step.d_pools[i][j] for i in range(size)) for j in range(size)]
+    run_of_cell = np.searchsorted(runs.first, np.arange(motion.time_s.size), side="right") - 1
+    share_of_run = motion.time_s / runs.duration_s[run_of_cell]
+    return Prices(
+        per_w=by_excess[run_of_cell] * share_of_run / power_share,
+        per_s=by_time[run_of_cell],
+    )
