@@ -34,13 +34,14 @@ def choose_track(gpx: GpxFile, file: Path, track: str | int | None) -> Track:
             continue
         if len(ridable) == 1:
             left = len(lines) - 1
-            note = f"the only {kind} taken, {left} other lines left out" if left else ""
-            return replace(
-                ridable[0], name=ridable[0].name or gpx.name, notes=(note,) if note else ()
-            )
+            notes = ((f"the only {kind} taken", f"{left} other left out"),) if left else ()
+            return replace(ridable[0], name=ridable[0].name or gpx.name, notes=notes)
         if _join_end_to_end(ridable):
             whole = joined(ridable, gpx.name or ridable[0].name)
-            return replace(whole, notes=(f"{len(ridable)} {kind}s that join end to end, as one",))
+            return replace(
+                whole,
+                notes=((f"{kind}s that join end to end read as one", f"{len(ridable)} {kind}s"),),
+            )
         raise UnusableInputError(
             f"{len(ridable)} {kind}s that do not join: {_listing(gpx)}",
             file=file,

@@ -77,7 +77,13 @@ class CourseSpec:
 
 @dataclass(frozen=True)
 class CourseReport:
-    """What reading and repairing found; printed by ``pacing course``."""
+    """What reading and repairing found; printed by ``pacing course``.
+
+    Lengths and climbing are of the whole course, all laps included; kilometres of the repairs are
+    along one lap in the direction of the file. ``verdict`` is ``good``, ``usable`` (with these
+    ``cautions``) or ``unusable`` (for these ``reasons``). The raw heights (K,) of the file stand
+    at road distances of one lap as ridden.
+    """
 
     length_horizontal_m: float
     climbing_raw_m: float
@@ -87,6 +93,7 @@ class CourseReport:
     gradient_error_pct: float
     repairs: tuple[Repair, ...] = ()
     cautions: tuple[str, ...] = ()
+    reasons: tuple[str, ...] = ()
     verdict: str = "good"
     raw_distance_m: Array = field(default_factory=lambda: np.empty(0))
     raw_elevation_m: Array = field(default_factory=lambda: np.empty(0))

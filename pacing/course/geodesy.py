@@ -99,3 +99,8 @@ def unwrapped_deg(lon_deg: Array) -> Array:
 def wrapped_deg(lon_deg: Array) -> Array:
     """Longitudes (P,) brought back to [-180, 180)."""
     return (lon_deg + 180.0) % 360.0 - 180.0
+
+
+def along_m(lat_deg: Array, lon_deg: Array) -> Array:
+    """Distance (P,) [m] of the points (P,) along the line, straight from one to the next."""
+    return np.concatenate([[0.0], np.cumsum(distances_m(lat_deg, lon_deg))])

@@ -7,6 +7,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from pacing.course.geodesy import along_m
+
 Array = NDArray[np.float64]
 
 
@@ -16,7 +18,9 @@ class Track:
 
     ``lat_deg`` and ``lon_deg`` are WGS84 degrees; ``elevation_m`` is NaN where the file gives none;
     ``time_s`` is seconds since 1970, NaN where missing, or None where no point has a time.
-    ``segment`` numbers the file's segments from 0; ``notes`` says what choosing the line involved.
+    ``segment`` numbers the file's segments from 0. ``notes`` says what choosing the line involved:
+    what was done, and how much. ``read_m`` is the distance of the points along the line as read,
+    where a repair has set it.
     """
 
     name: str
@@ -25,11 +29,18 @@ class Track:
     elevation_m: Array
     time_s: Array | None
     segment: NDArray[np.int64]
-    notes: tuple[str, ...] = ()
+    notes: tuple[tuple[str, str], ...] = ()
+    read_m: Array | None = None
 
     def __len__(self) -> int:
         """Number of points."""
         return len(self.lat_deg)
+
+    def read_km(self) -> Array:
+        """Kilometres (P,) of the points along the line as read."""
+        if self.read_m is None:
+            return along_m(self.lat_deg, self.lon_deg) / 1000.0
+        return self.read_m / 1000.0
 
     def kept(self, keep: NDArray[np.bool_] | NDArray[np.int64]) -> Track:
         """The track with only some of its points (a mask or indices (P,))."""
@@ -40,6 +51,7 @@ class Track:
             elevation_m=self.elevation_m[keep],
             time_s=None if self.time_s is None else self.time_s[keep],
             segment=self.segment[keep],
+            read_m=None if self.read_m is None else self.read_m[keep],
         )
 
 

@@ -1,0 +1,27 @@
+"""How long a course may be."""
+
+from __future__ import annotations
+
+from pacing.errors import UnusableInputError
+
+LONGEST_M = 1_000_000.0
+SHORTEST_M = 100.0
+
+
+def refuse_length(length_m: float, file: object) -> UnusableInputError | None:
+    """Why a course is too long or too short for a plan: the error to raise, or None."""
+    if length_m > LONGEST_M:
+        return UnusableInputError(
+            f"{length_m / 1000:,.0f} km of road",
+            file=file,
+            expected=f"a course of at most {LONGEST_M / 1000:,.0f} km, all laps included",
+            mend="choose a part with course.from_km and course.to_km",
+        )
+    if length_m < SHORTEST_M:
+        return UnusableInputError(
+            f"{length_m:.0f} m of road",
+            file=file,
+            expected=f"a course of at least {SHORTEST_M:.0f} m",
+            mend="export the whole course",
+        )
+    return None

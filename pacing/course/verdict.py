@@ -1,0 +1,169 @@
+"""Whether a course file carries a plan: what to know before using it, what forbids it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pacing.course.course import CourseReport, CourseSpec
+from pacing.course.extent import refuse_length
+from pacing.course.gaps import BRIDGED, refuse_wide_gaps
+from pacing.course.lap import Lap
+from pacing.course.missing import missing_share, refuse_missing_heights
+from pacing.course.track import Track
+from pacing.errors import UnusableInputError
+
+Array = NDArray[np.float64]
+
+MOST_POINTS_DROPPED = 0.10
+STEEPEST_BELIEVED = 0.30
+STEEP = 0.20
+UNCERTAIN_PCT = 1.0
+SPARSE_M = 100.0
+SAME_PLACE_M = 30.0
+DRIFT_M = 5.0
+
+
+@dataclass(frozen=True)
+class Surveyed:
+    """What the verdict is made from: the track as read and repaired, the lap, the report so far."""
+
+    spec: CourseSpec
+    as_read: Track
+    track: Track
+    lap: Lap
+    report: CourseReport
+
+
+def refusals(found: Surveyed) -> tuple[UnusableInputError, ...]:
+    """Why the course cannot be planned, the plainest reason first; empty if it can."""
+    file = found.spec.file
+    length = found.lap.length_m
+    return tuple(
+        reason
+        for reason in (
+            refuse_length(length * found.spec.laps, file),
+            None if found.spec.flat else refuse_missing_heights(found.track, file),
+            refuse_wide_gaps(found.report.repairs, length, file),
+            _refuse_scattered_points(found),
+            None if found.spec.flat else _refuse_walls(found),
+        )
+        if reason is not None
+    )
+
+
+def _refuse_scattered_points(found: Surveyed) -> UnusableInputError | None:
+    new = np.diff(found.as_read.lat_deg) != 0.0
+    new |= np.diff(found.as_read.lon_deg) != 0.0
+    places = 1 + int(np.sum(new))
+    dropped = 1.0 - len(found.track) / places
+    if dropped <= MOST_POINTS_DROPPED:
+        return None
+    return UnusableInputError(
+        f"{100 * dropped:.0f} % of the points lie far off the line or wander on the spot",
+        file=found.spec.file,
+        expected=f"at most {100 * MOST_POINTS_DROPPED:.0f} %",
+        mend="draw the course in a route planner, or bring a recording with clear reception",
+    )
+
+
+def _refuse_walls(found: Surveyed) -> UnusableInputError | None:
+    at, gradient = steepest(found.lap, 100.0)
+    if abs(gradient) <= STEEPEST_BELIEVED:
+        return None
+    return UnusableInputError(
+        f"a gradient of {100 * gradient:.0f} % over 100 m at km {at / 1000:.1f}",
+        file=found.spec.file,
+        expected=f"heights of a road, no steeper than {100 * STEEPEST_BELIEVED:.0f} %",
+        mend="bring the course with heights from another source, say which in course.heights",
+    )
+
+
+def cautions(found: Surveyed) -> tuple[str, ...]:
+    """What a user should know before riding by this course; empty if there is nothing."""
+    return (
+        *_cautions_on_line(found),
+        *([_level(found)] if found.spec.flat else _cautions_on_heights(found)),
+    )
+
+
+def _level(found: Surveyed) -> str:
+    return f"ridden as level, at {found.lap.elevation_m[0]:.0f} m: course.flat is set"
+
+
+def _cautions_on_line(found: Surveyed) -> list[str]:
+    words = []
+    gaps = [repair for repair in found.report.repairs if repair.what == BRIDGED]
+    if gaps:
+        widest = max(gaps, key=lambda gap: gap.to_km - gap.from_km)
+        words.append(
+            f"{len(gaps)} gap{'s' * (len(gaps) > 1)} bridged by a straight line, the widest "
+            f"{widest.amount} at km {widest.from_km:.1f}: bends and hills there are not known"
+        )
+    thrown = [r for r in found.report.repairs if r.what.startswith("points far off")]
+    words += [f"{r.amount}, left out: check the line on the map" for r in thrown]
+    spacing = float(np.median(np.diff(1000.0 * found.track.read_km())))
+    if spacing > SPARSE_M:
+        words.append(f"points {spacing:.0f} m apart: bends and short hills between are not known")
+    if found.spec.official_km is not None and abs(found.lap.scale - 1.0) > 0.02:
+        words.append(
+            f"the official length is {100 * (found.lap.scale - 1.0):+.1f} % from the file's line"
+        )
+    return words
+
+
+def _cautions_on_heights(found: Surveyed) -> list[str]:
+    words = []
+    track, report = found.track, found.report
+    gone = ~np.isfinite(track.elevation_m)
+    if gone.any() and not gone.all():
+        share, longest = missing_share(1000.0 * track.read_km(), gone)
+        if share > 0.02 or longest > 300.0:
+            words.append(
+                f"heights missing on {100 * share:.0f} % of the way, up to {longest:.0f} m at a "
+                "stretch, are interpolated"
+            )
+    if report.gradient_error_pct > UNCERTAIN_PCT:
+        words.append(f"gradients over 100 m are known to {report.gradient_error_pct:.1f} % only")
+    at, gradient = steepest(found.lap, 100.0)
+    if STEEP < abs(gradient) <= STEEPEST_BELIEVED:
+        words.append(
+            f"100 m of {100 * gradient:.0f} % at km {at / 1000:.1f}: is the road really so steep?"
+        )
+    height = found.lap.raw_elevation_m
+    if height.size and not height.any():
+        words.append("every height in the file is 0 m: is the course level?")
+    return words
+
+
+def steepest(lap: Lap, length_m: float) -> tuple[float, float]:
+    """Middle [m] and gradient of the steepest stretch of a length, up or down, on the road.
+
+    The gradient is rise over horizontal run; on a shorter lap, that of the whole.
+    """
+    return steepest_of(lap.road_m, lap.elevation_m, length_m)
+
+
+def steepest_of(road_m: Array, elevation_m: Array, length_m: float) -> tuple[float, float]:
+    """Middle [m] and gradient of the steepest stretch of a length on nodes (M+1,) of a road."""
+    length = min(length_m, float(road_m[-1]))
+    start = np.concatenate([road_m[road_m <= road_m[-1] - length], [road_m[-1] - length]])
+    rise = np.interp(start + length, road_m, elevation_m) - np.interp(start, road_m, elevation_m)
+    most = int(np.argmax(np.abs(rise)))
+    run = np.sqrt(max(length**2 - float(rise[most]) ** 2, 1e-9))
+    return float(start[most]) + length / 2, float(rise[most]) / float(run)
+
+
+def judged(found: Surveyed) -> tuple[CourseReport, tuple[UnusableInputError, ...]]:
+    """The report with its cautions, reasons and verdict, and the refusals themselves."""
+    refused = refusals(found)
+    warned = cautions(found)
+    report = replace(
+        found.report,
+        cautions=warned,
+        reasons=tuple(str(reason) for reason in refused),
+        verdict="unusable" if refused else "usable" if warned else "good",
+    )
+    return report, refused
