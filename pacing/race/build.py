@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
@@ -51,8 +52,13 @@ def build(
 
 def _course(course: dict[str, Any], file: Path, origins: Origins) -> Course:
     """The course; an error about one of its keys is told as one about the race file."""
+    spec = _spec(course, file)
+    if not os.path.exists(spec.file):  # noqa: PTH110 - does not raise on a name too long
+        raise origins.error(
+            ("course", "file"), f"no such file: {spec.file}", expected="a GPX or CSV course file"
+        )
     try:
-        return load_course(_spec(course, file))
+        return load_course(spec)
     except UnusableInputError as problem:
         if problem.file is not None or not problem.key:
             raise

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Set
 from typing import Any
 
 from pacing.race.keys import LIST_MARK, NOT_YET, Key, lists_of, sections
@@ -84,7 +84,12 @@ class Checked:
             beside = value if section == "air.hours[]" else {}
             inherited = {key: beside[key] for key in sections()[section] if key in beside}
             checked.append(
-                self._keys(section, without_rivals(inherited, entry) | entry, (*path, number))
+                self._keys(
+                    section,
+                    without_rivals(inherited, entry) | entry,
+                    (*path, number),
+                    quiet=inherited.keys() - entry.keys(),
+                )
             )
         return checked
 
@@ -96,17 +101,21 @@ class Checked:
         *,
         lists: tuple[str, ...] = (),
         needed: bool = True,
+        quiet: Set[str] = frozenset(),
     ) -> dict[str, Any]:
         keys = sections()[section]
         for name in given:
             if name not in keys and name not in lists:
                 mend = did_you_mean_key(name, section, lists)
+                if name in TOP and isinstance(given[name], dict):
+                    mend = f"keep [{name}] in the race file"
                 raise self.origins.error((*path, name), "unknown key", mend=mend)
         filled: dict[str, Any] = {}
         for name, key in keys.items():
             value = given.get(name)
             if value is not None:
-                filled[name] = checked_value(key, value, (*path, name), self.origins, self.caution)
+                caution = _no_caution if name in quiet else self.caution
+                filled[name] = checked_value(key, value, (*path, name), self.origins, caution)
                 continue
             if key.required and needed and not _replaced(name, given):
                 raise self._missing(key, (*path, name))
@@ -135,6 +144,10 @@ def without_rivals(base: Mapping[str, Any], beside: Mapping[str, Any]) -> dict[s
             if here & beside.keys() and not there & beside.keys():
                 kept = {key: value for key, value in kept.items() if key not in there}
     return kept
+
+
+def _no_caution(path: Path, words: str) -> None:
+    pass
 
 
 def _replaced(name: str, given: Mapping[str, Any]) -> bool:

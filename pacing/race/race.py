@@ -8,9 +8,9 @@ from pathlib import Path
 from typing import Any
 
 from pacing.air import Day
-from pacing.bike import Bike
+from pacing.bike import Bike, DragArea
 from pacing.course.course import Course
-from pacing.rider import Rider
+from pacing.rider import Position, Rider
 
 
 @dataclass(frozen=True)
@@ -80,3 +80,8 @@ class Race:
     def effective_mass_kg(self) -> float:
         """What is accelerated: the mass and I/r² of the wheels."""
         return self.mass_kg + self.bike.rotating_mass_kg
+
+    def drag_area(self, position: Position) -> DragArea:
+        """All that multiplies ½ρ·flow·along in that position: rider, bike by yaw, wheels."""
+        area = position.drag_area.plus(self.bike.wheel_rotation_m2)
+        return area if self.bike.cda_by_yaw is None else area + self.bike.cda_by_yaw

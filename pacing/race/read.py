@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any, NamedTuple
@@ -72,7 +73,10 @@ def read_given(
 def _named_file(race: TomlFile, name: str, value: Any) -> TomlFile:
     if not isinstance(value, str) or not value.strip():
         raise Origins(race).error((name, "file"), shown(value), expected="a path in quotes")
-    return read_toml(race.file.parent / value, what=f"a file with the keys of [{name}] (TOML)")
+    file, what = race.file.parent / value, f"a file with the keys of [{name}] (TOML)"
+    if not os.path.exists(file):  # noqa: PTH110 - does not raise on a name too long
+        raise Origins(race).error((name, "file"), f"no such file: {file}", expected=what)
+    return read_toml(file, what=what)
 
 
 def _merge(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import re
 import tomllib
 from collections.abc import Mapping
@@ -62,7 +63,7 @@ def _bytes_of(file: Path, what: str) -> bytes:
     except ValueError:
         raise UnusableInputError("not a file name", file=repr(str(file)), expected=what) from None
     except OSError as problem:
-        if file.is_dir():
+        if os.path.isdir(file):  # noqa: PTH112 - does not raise on a name too long
             raise UnusableInputError("a folder", file=file, expected=what) from None
         reason = problem.strerror or type(problem).__name__
         raise UnusableInputError(f"cannot be read ({reason})", file=file) from None
@@ -97,16 +98,38 @@ def _parsed(text: str, file: Path) -> dict[str, Any]:
             "tables or lists nested too deeply", file=file, expected=f"at most {DEEPEST} levels"
         ) from None
     except tomllib.TOMLDecodeError as problem:
-        words, line = _PLACE.sub("", str(problem)), _line_in(str(problem), text)
-        words = words.removesuffix(" (at end of document)")
-        raise UnusableInputError(
-            f"not TOML: {words[:1].lower()}{words[1:]}",
-            file=file,
-            line=line,
-            mend="see that text stands in quotes and every key is written key = value",
-        ) from None
+        words, line = str(problem), _line_in(str(problem), text)
+        raise UnusableInputError(f"not TOML: {_plain(words)}", file=file, line=line) from None
     except ValueError:
         raise UnusableInputError("not TOML: a number with too many digits", file=file) from None
+
+
+_PLAIN = (
+    ("Cannot (overwrite|declare|mutate|redefine)|already|Duplicate", "a key or table given twice"),
+    (
+        "Expected '=' after a key|character for a key|Invalid statement",
+        "a line that is not key = value",
+    ),
+    (
+        r"Illegal character '\\n'|Unterminated string|Expected \"'\"|Expected '\"'",
+        "text whose quotes do not close",
+    ),
+    ("Invalid value", "a value that is no number, true, false, clock or text in quotes"),
+    (r"Unescaped '\\' in a string", "a \\ in double quotes; single quotes take it as it is"),
+    ("Expected newline or end of document", "something after the value that does not belong to it"),
+    (r"Expected '\]", "a [table] whose bracket does not close"),
+    ("Unclosed array", "a list whose bracket does not close"),
+    ("Unclosed inline table|Invalid inline table", "a { table } that does not close on its line"),
+)
+"""The parser's words, where ours are plainer."""
+
+
+def _plain(words: str) -> str:
+    for pattern, plain in _PLAIN:
+        if re.search(pattern, words):
+            return plain
+    words = re.sub(r" \(at .*\)$", "", words)
+    return f"{words[:1].lower()}{words[1:]}"
 
 
 def _line_in(words: str, text: str) -> int | None:

@@ -6,6 +6,7 @@ import datetime
 import math
 import re
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
 from pacing.race.keys import Key
@@ -127,8 +128,10 @@ def _numbers(
 ) -> list[float]:
     if not isinstance(value, list) or len(value) > MOST_VALUES:
         raise origins.error(path, shown(value), expected=key.expected)
+    item_key = replace(key, kind="number")
     return [
-        _number(key, item, (*path, number), origins, caution) for number, item in enumerate(value)
+        _number(item_key, item, (*path, number), origins, caution)
+        for number, item in enumerate(value)
     ]
 
 
