@@ -1,8 +1,8 @@
 """The default recovery law: W′ in a quick and a slow pool.
 
-A calibration, not a validation: four constants were chosen so that the law stays near second-hand
-group means of recovery after exhaustion and of intermittent work to exhaustion
-(`pacing.rider.recovery_fit` does it and prints how near). Single riders differ by more.
+A calibration, not a validation: the four constants were fitted to second-hand group means of
+recovery after exhaustion and of intermittent work to exhaustion (`pacing.rider.recovery_fit` does
+it and prints how near it comes). Single riders differ by more.
 """
 
 from __future__ import annotations
@@ -20,26 +20,23 @@ from pacing.rider.two_phase_many import recover_many, spend_many
 Array = NDArray[np.float64]
 Pair = tuple[float, float]
 
-SLOW_TAU = PowerOfDeficit(scale=17430.0, exponent=0.64)
+SLOW_TAU = PowerOfDeficit(scale=13957.0, exponent=0.5924)
 
 
 @dataclass(frozen=True)
 class TwoPhase(RecoveryLaw):
     """Two pools that are spent together and come back each at its own pace.
 
-    Spending takes ``by_content`` of the rate from the pools in proportion to what they hold and
-    the rest in proportion to their size; an empty pool gives nothing while the other still
-    holds some, and below zero both fall by size. Recovery: each pool's debt decays, the quick
-    one with ``quick_tau_s``, the slow one with ``slow_tau`` of D. Where together they would
-    return more than D, both are slowed alike.
+    Spending takes from each in proportion to what it holds; below zero both fall by size.
+    Recovery: each pool's debt decays, the quick one with ``quick_tau_s``, the slow one with
+    ``slow_tau`` of D. Where together they would return more than D, both are slowed alike.
 
     Source: caen-2021 (two phases); constants from `pacing.rider.recovery_fit`.
     """
 
-    quick_share: float = 0.365
-    quick_tau_s: float = 26.0
+    quick_share: float = 0.3735
+    quick_tau_s: float = 33.73
     slow_tau: PowerOfDeficit = SLOW_TAU
-    by_content: float = 0.75
     name = "two-phase"
 
     @property
@@ -55,7 +52,6 @@ class TwoPhase(RecoveryLaw):
             "quick_tau_s": self.quick_tau_s,
             "slow_tau_scale": self.slow_tau.scale,
             "slow_tau_exponent": self.slow_tau.exponent,
-            "by_content": self.by_content,
         }
 
     def advance(
@@ -117,7 +113,6 @@ class TwoPhase(RecoveryLaw):
             after[:, up],
             np.maximum(excess[up], 0.0) * duration[up],
             quick_share=self.quick_share,
-            by_content=self.by_content,
         )
         down = ~up
         deficit = -excess[down]
@@ -132,69 +127,48 @@ class TwoPhase(RecoveryLaw):
         return after
 
     def _spend(self, quick: float, slow: float, spent_j: float) -> Pair:
-        share = self.quick_share
-        if quick <= 0.0 or slow <= 0.0:
-            held = max(quick, 0.0) + max(slow, 0.0)
-            if spent_j > held:
-                rest = spent_j - held
-                return min(quick, 0.0) - share * rest, min(slow, 0.0) - (1.0 - share) * rest
-            return (quick - spent_j, slow) if quick > 0.0 else (quick, slow - spent_j)
         total = quick + slow
         left = total - spent_j
-        if left <= 0.0:
+        share = self.quick_share
+        if quick > 0.0 and slow > 0.0:
+            if left > 0.0:
+                kept = left / total
+                return quick * kept, slow * kept
             return share * left, (1.0 - share) * left
-        # d(quick − share·total)/d total = by_content·(quick − share·total)/total
-        lead = (quick - share * total) * (left / total) ** self.by_content
-        quick_left = share * left + lead
-        if quick_left < 0.0:
-            return 0.0, left
-        if quick_left > left:
-            return left, 0.0
-        return quick_left, left - quick_left
+        held = max(quick, 0.0) + max(slow, 0.0)
+        if spent_j > held:
+            rest = spent_j - held
+            return min(quick, 0.0) - share * rest, min(slow, 0.0) - (1.0 - share) * rest
+        return (quick - spent_j, slow) if quick > 0.0 else (quick, slow - spent_j)
 
     def _spend_and_slopes(
         self, quick: float, slow: float, excess_w: float, duration_s: float
     ) -> Advance:
         share, spent_j = self.quick_share, excess_w * duration_s
-        pools = self._spend(quick, slow, spent_j)
         total = quick + slow
         left = total - spent_j
         # rows: d quick after, d slow after; columns: by quick, by slow, by what is spent
-        if quick <= 0.0 or slow <= 0.0:
-            rows = self._slopes_with_one_empty(quick, slow, spent_j)
-        elif left <= 0.0:
-            rows = ((share, share, -share), (1.0 - share, 1.0 - share, share - 1.0))
-        elif pools[0] == 0.0:
-            rows = ((0.0, 0.0, 0.0), (1.0, 1.0, -1.0))
-        elif pools[1] == 0.0:
-            rows = ((1.0, 1.0, -1.0), (0.0, 0.0, 0.0))
-        else:
-            kept = (left / total) ** self.by_content
-            bend = self.by_content * (quick - share * total) * kept
-            moved = bend * (1.0 / left - 1.0 / total)
-            first = (
-                share + (1.0 - share) * kept + moved,
-                share - share * kept + moved,
-                -share - bend / left,
+        if quick > 0.0 and slow > 0.0 and left > 0.0:
+            kept, shift = left / total, spent_j / total**2
+            rows = (
+                (kept + quick * shift, quick * shift, -quick / total),
+                (slow * shift, kept + slow * shift, -slow / total),
             )
-            rows = (first, (1.0 - first[0], 1.0 - first[1], -1.0 - first[2]))
+        elif (quick > 0.0 or slow > 0.0) and left > min(quick, slow, 0.0):
+            from_quick = 1.0 if quick > 0.0 else 0.0
+            rows = ((1.0, 0.0, -from_quick), (0.0, 1.0, from_quick - 1.0))
+        else:
+            quick_own, slow_own = float(quick <= 0.0), float(slow <= 0.0)
+            rows = (
+                (share + (1.0 - share) * quick_own, share * (1.0 - slow_own), -share),
+                ((1.0 - share) * (1.0 - quick_own), 1.0 - share * (1.0 - slow_own), share - 1.0),
+            )
         return Advance(
-            pools,
+            self._spend(quick, slow, spent_j),
             (rows[0][:2], rows[1][:2]),
             (rows[0][2] * duration_s, rows[1][2] * duration_s),
             (rows[0][2] * excess_w, rows[1][2] * excess_w),
         )
-
-    def _slopes_with_one_empty(
-        self, quick: float, slow: float, spent_j: float
-    ) -> tuple[tuple[float, float, float], tuple[float, float, float]]:
-        share = self.quick_share
-        if spent_j <= max(quick, 0.0) + max(slow, 0.0) and (quick > 0.0 or slow > 0.0):
-            from_quick = 1.0 if quick > 0.0 else 0.0
-            return (1.0, 0.0, -from_quick), (0.0, 1.0, from_quick - 1.0)
-        by_quick = (share, 1.0 - share) if quick > 0.0 else (1.0, 0.0)
-        by_slow = (share, 1.0 - share) if slow > 0.0 else (0.0, 1.0)
-        return (by_quick[0], by_slow[0], -share), (by_quick[1], by_slow[1], share - 1.0)
 
     def _recover_and_slopes(
         self,

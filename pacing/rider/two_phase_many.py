@@ -8,22 +8,18 @@ from numpy.typing import NDArray
 Array = NDArray[np.float64]
 
 
-def spend_many(pools: Array, spent_j: Array, *, quick_share: float, by_content: float) -> Array:
+def spend_many(pools: Array, spent_j: Array, *, quick_share: float) -> Array:
     """Pools (2, n) after ``spent_j`` (n,), see `pacing.rider.recovery_two_phase.TwoPhase`."""
     shares = np.array([[quick_share], [1.0 - quick_share]])
     held = np.maximum(pools, 0.0)
     rest = np.maximum(spent_j - held.sum(axis=0), 0.0)
     # One pool empty: the other gives what it holds, then both fall by size.
-    gives = np.where(held > 0.0, np.minimum(held, spent_j), 0.0)
-    one_empty = pools - gives - shares * rest
+    one_empty = pools - np.minimum(held, spent_j) - shares * rest
     total = pools.sum(axis=0)
     left = total - spent_j
     both = np.all(pools > 0.0, axis=0)
-    safe_total = np.where(both, total, 1.0)
-    kept = np.where(both & (left > 0.0), left / safe_total, 0.0) ** by_content
-    quick = quick_share * left + (pools[0] - quick_share * total) * kept
-    quick = np.where(left > 0.0, np.clip(quick, 0.0, np.maximum(left, 0.0)), quick_share * left)
-    return np.where(both, np.stack([quick, left - quick]), one_empty)
+    kept = left / np.where(both, total, 1.0)
+    return np.asarray(np.where(both, np.where(left > 0.0, pools * kept, shares * left), one_empty))
 
 
 def recover_many(
