@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from pacing.motion.simulate import Mode, Motion
 from pacing.motion.slopes import PieceSlopes
 from pacing.rider.budget import Advance, RecoveryLaw
+from pacing.rider.recovery import Pools
 
 Array = NDArray[np.float64]
 
@@ -35,6 +36,14 @@ class Lowest(NamedTuple):
     end_slopes: Array
 
 
+def starting_pools(law: RecoveryLaw, w_prime_j: float, start_j: float | None) -> Pools:
+    """Pools of a rider who starts with ``start_j`` of W′ left (None: rested)."""
+    pools = law.full(w_prime_j)
+    if start_j is None:
+        return pools
+    return tuple(pool * start_j / w_prime_j for pool in pools)
+
+
 def excess_w(motion: Motion, *, power_share: Array, critical_power_w: Array) -> Array:
     """Power above critical power in each cell (N,), by the position's power share."""
     return motion.power_w / power_share - critical_power_w
@@ -49,9 +58,7 @@ def balance_at_nodes(
     start_j: float | None = None,
 ) -> Array:
     """W′ left at every node (N+1,), from ``start_j`` (default: full)."""
-    pools = law.full(w_prime_j)
-    if start_j is not None:
-        pools = tuple(pool * start_j / w_prime_j for pool in pools)
+    pools = starting_pools(law, w_prime_j, start_j)
     left = np.empty(time_s.size + 1)
     left[0] = sum(pools)
     for cell, (excess, time) in enumerate(zip(excess_w.tolist(), time_s.tolist(), strict=True)):
@@ -81,6 +88,25 @@ def runs_of(motion: Motion, *, starts: NDArray[np.intp], excess_w: Array) -> Run
     )
 
 
+class RunSlopes(NamedTuple):
+    """Slopes of each run's excess power and duration (R, 2) in its piece's own power and entry
+    energy."""
+
+    excess: Array
+    duration: Array
+
+
+def run_slopes(runs: Runs, slopes: PieceSlopes, *, power_share: Array) -> RunSlopes:
+    """Gather the slopes by cell into slopes by run."""
+    share = power_share[runs.first]
+    excess = [slopes.power_own[runs.first] / share, slopes.power_entry[runs.first] / share]
+    duration = [
+        np.add.reduceat(slopes.time_own, runs.first),
+        np.add.reduceat(slopes.time_entry, runs.first),
+    ]
+    return RunSlopes(np.stack(excess, axis=1), np.stack(duration, axis=1))
+
+
 def lowest_in_pieces(
     law: RecoveryLaw,
     motion: Motion,
@@ -95,28 +121,13 @@ def lowest_in_pieces(
     """Lowest and last W′ of every piece, with exact slopes in all piece powers."""
     count = starts.size
     runs = runs_of(motion, starts=starts, excess_w=excess_w)
-    # slopes of each run in its piece's own power and entry energy
-    by_time = np.stack(
-        [
-            np.add.reduceat(slopes.time_own, runs.first),
-            np.add.reduceat(slopes.time_entry, runs.first),
-        ],
-        axis=1,
-    ).tolist()
-    by_power = np.stack(
-        [
-            slopes.power_own[runs.first] / power_share[runs.first],
-            slopes.power_entry[runs.first] / power_share[runs.first],
-        ],
-        axis=1,
-    ).tolist()
+    change = run_slopes(runs, slopes, power_share=power_share)
+    by_time, by_power = change.duration.tolist(), change.excess.tolist()
     excess, duration = runs.excess_w.tolist(), runs.duration_s.tolist()
     first_run = np.searchsorted(runs.piece, np.arange(count)).tolist()
     first_run.append(runs.first.size)
 
-    pools = law.full(w_prime_j)
-    if start_j is not None:
-        pools = tuple(pool * start_j / w_prime_j for pool in pools)
+    pools = starting_pools(law, w_prime_j, start_j)
     size = len(pools)
     entry_jacobian = np.zeros((size, count))
     lowest, ends = np.empty(count), np.empty(count)
@@ -209,9 +220,7 @@ def prices(
     ``multipliers`` (n,) weigh each piece's lowest W′, or (1,) the last with ``at_lowest`` False.
     """
     runs = runs_of(motion, starts=starts, excess_w=excess_w)
-    pools = law.full(w_prime_j)
-    if start_j is not None:
-        pools = tuple(pool * start_j / w_prime_j for pool in pools)
+    pools = starting_pools(law, w_prime_j, start_j)
     steps = []
     for excess, duration in zip(runs.excess_w.tolist(), runs.duration_s.tolist(), strict=True):
         steps.append(law.advance_and_slopes(pools, excess, duration, w_prime_j=w_prime_j))

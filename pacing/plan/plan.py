@@ -21,7 +21,7 @@ from pacing.plan.prepare import Prepared, prepare, settled
 from pacing.plan.problem import Cuts, Ride, ride
 from pacing.plan.refine import Refinement, reduced_slope, refined
 from pacing.plan.replay import refuse_reserve_broken, refuse_stall, replayed
-from pacing.plan.solve import Solution, best_constant, solve
+from pacing.plan.solve import Solution, solve
 from pacing.race import Race
 
 Array = NDArray[np.float64]
@@ -187,7 +187,7 @@ def _merged(ridden: Ride) -> Ride:
 
 
 def _plan(prepared: Prepared, found: _Found, ridden: Ride, seconds: float) -> Plan:
-    race, constant = prepared.race, found.prepared.constant
+    race, constant = found.prepared.race, found.prepared.constant
     course_places = places_of(race.course)
     unrounded = found.solution.ride.motion.total_s
     return Plan(

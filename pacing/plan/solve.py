@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +14,7 @@ from pacing.plan.problem import Cuts, Problem, Ride, ride
 Array = NDArray[np.float64]
 
 MOST_ITERATIONS = 300
+MOST_BOUND_CHANGES = 8
 TIME_TOLERANCE_S = 1e-5
 JOULES_PER_UNIT = 1000.0
 
@@ -64,9 +65,23 @@ def power_bounds_w(problem: Problem, ridden: Ride) -> tuple[Array, Array]:
     low = np.full(starts.size, problem.min_power_w)
     high = np.full(starts.size, problem.max_power_w)
     early = ridden.motion.elapsed_s[starts] < 30.0
-    early[0] = problem.start_speed_m_s < 1.0 or bool(early[0])
     high[early] = np.minimum(high[early], problem.first_30_s_max_w)
+    fresh = _rested_pieces(ridden)
+    at_critical = problem.critical_power_w[starts] * problem.power_share[starts]
+    low[fresh] = np.maximum(low[fresh], np.minimum(at_critical[fresh], high[fresh]))
     return low, np.maximum(low, high)
+
+
+def _rested_pieces(ridden: Ride) -> NDArray[np.bool_]:
+    """The first pieces, up to and with the first ridden above critical power (n,).
+
+    W′ is full there, so less than critical power loses time and gains nothing; where that is
+    not ruled out, the kink of a full W′ stops the solver short.
+    """
+    if ridden.problem.w_start_j is not None:
+        return np.zeros(ridden.starts.size, dtype=bool)
+    spending = np.logical_or.reduceat(ridden.excess_w > 1e-3, ridden.starts)
+    return np.concatenate([[True], ~np.logical_or.accumulate(spending)[:-1]])
 
 
 def standard_step_w(ridden: Ride) -> Array:
@@ -114,7 +129,23 @@ def solve(
     """Find the piece powers (n,) of least time from the starting powers ``power_w`` (n,)."""
     first = ride(problem, starts, power_w, guess_m_s=guess_m_s)
     low, high = power_bounds_w(problem, first)
-    base = np.clip(power_w, low, high)
+    iterations = evaluations = 0
+    for _ in range(MOST_BOUND_CHANGES):
+        solution = _solve_within(first, low, high, tolerance_s)
+        iterations += solution.iterations
+        evaluations += solution.evaluations
+        first = solution.ride
+        low, high = power_bounds_w(problem, first)
+        outside = (first.power_w < low - 1e-6) | (first.power_w > high + 1e-6)
+        if not np.any(outside):
+            break
+    return replace(solution, iterations=iterations, evaluations=evaluations)
+
+
+def _solve_within(first: Ride, low: Array, high: Array, tolerance_s: float) -> Solution:
+    """One run of SLSQP between fixed bounds."""
+    problem, starts = first.problem, first.starts
+    base = np.clip(first.power_w, low, high)
     step = standard_step_w(first)
     memory = _Memory(problem, starts, base, step, first)
     constraints = [
@@ -143,6 +174,7 @@ def solve(
     )
     best = memory.at(np.asarray(result.x))
     multipliers = np.asarray(result.multipliers)
+    jacobian = np.concatenate([constraint["jac"](result.x) for constraint in constraints])
     return Solution(
         ride=best,
         status=int(result.status),
@@ -150,17 +182,16 @@ def solve(
         iterations=int(result.nit),
         evaluations=memory.evaluations,
         multipliers_s_per_j=multipliers[: margins_j(best).size] / JOULES_PER_UNIT,
-        kkt_residual=_kkt_residual(best, multipliers, constraints, result.x, step, low, high),
+        kkt_residual=_kkt_residual(
+            best.time_slopes * step - multipliers @ jacobian,
+            at_low=best.power_w <= low + 1e-6 * step,
+            at_high=best.power_w >= high - 1e-6 * step,
+        ),
     )
 
 
-def _kkt_residual(
-    best: Ride, multipliers: Array, constraints: list, x: Array, step: Array, low: Array, high: Array
-) -> float:
-    jacobian = np.concatenate([constraint["jac"](x) for constraint in constraints])
-    slope = best.time_slopes * step - multipliers @ jacobian
-    at_low = best.power_w <= low + 1e-6 * step
-    at_high = best.power_w >= high - 1e-6 * step
+def _kkt_residual(slope: Array, *, at_low: NDArray[np.bool_], at_high: NDArray[np.bool_]) -> float:
+    """Largest slope of the Lagrangian that no bound holds back."""
     slope = np.where(at_low, np.minimum(slope, 0.0), slope)
     slope = np.where(at_high, np.maximum(slope, 0.0), slope)
     return float(np.max(np.abs(slope)))
