@@ -163,4 +163,11 @@ SOURCES: dict[str, Source] = {
         "Department of Defense World Geodetic System 1984, its definition and relationships",
         "NIMA TR8350.2, 3rd edition, chapter 3",
     ),
+    "wahba-1985": Source(
+        "Wahba",
+        1985,
+        "A comparison of GCV and GML for choosing the smoothing parameter in the generalized "
+        "spline smoothing problem",
+        "Ann Stat 13(4):1378-1402",
+    ),
 }
