@@ -48,8 +48,16 @@ def choose_track(gpx: GpxFile, file: Path, track: str | int | None) -> Track:
             expected="one course",
             mend="choose one with course.track in the race file, or with --track",
         )
-    raise UnusableInputError(
-        "no points", file=file, expected="a track or a route with at least two points"
+    raise refuse_few_points(0, file)
+
+
+def refuse_few_points(count: int, file: Path) -> UnusableInputError:
+    """The error for a course without points, or with one."""
+    return UnusableInputError(
+        "no points" if count == 0 else "only one point",
+        file=file,
+        expected="a track or a route with at least two points",
+        mend="export the course again as a track",
     )
 
 

@@ -27,6 +27,8 @@ def find_gaps(track: Track) -> list[Repair]:
     Where segments meet counts as any other step. One repair for each gap.
     """
     step = distances_m(track.lat_deg, track.lon_deg)
+    if step.size == 0:
+        return []
     km = track.read_km()
     usual = median_filter(step, size=min(NEIGHBOURS, len(step)), mode="nearest")
     gaps = np.flatnonzero((step > GAP_M) & (step > GAP_RATIO * usual))
