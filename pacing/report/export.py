@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
-import json
 import math
 import re
 from collections.abc import Mapping
 from itertools import pairwise
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 from xml.sax.saxutils import escape
 
 import numpy as np
 
 from pacing.report import figures, sheet, words
 from pacing.report.output_set import output_set
+from pacing.report.strict_json import json_text
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -77,26 +77,6 @@ def write_plan(plan: Plan, folder: Path) -> None:
 def plan_json(plan: Plan) -> str:
     """The whole result as one strict JSON document."""
     return json_text(plan.to_json_dict())
-
-
-def json_text(document: Mapping[str, Any]) -> str:
-    """``document`` as strict JSON: NaN and infinity are null, paths and clocks are text."""
-    return json.dumps(plain(document), allow_nan=False, ensure_ascii=False, indent=1) + "\n"
-
-
-def plain(value: Any) -> Any:
-    """``value`` in JSON's own types."""
-    if isinstance(value, Mapping):
-        return {str(key): plain(item) for key, item in value.items()}
-    if isinstance(value, (list, tuple, set, frozenset, np.ndarray)):
-        return [plain(item) for item in value]
-    if isinstance(value, (bool, np.bool_)):
-        return bool(value)
-    if isinstance(value, (int, np.integer)):
-        return int(value)
-    if isinstance(value, (float, np.floating)):
-        return float(value) if math.isfinite(value) else None
-    return None if value is None or value != value else str(value)
 
 
 def cues_csv(plan: Plan) -> str:

@@ -178,7 +178,7 @@ def build_plan(
     balance = 19_000 - np.cumsum(np.where(spent > 0, spent, 0.4 * spent))
     # The crude rider is bent back to a plausible reserve, not simulated.
     low, high = balance.min(), max(balance.max(), 19_000.0)
-    balance = 2_500 + (balance - low) * 16_500 / (high - low)
+    balance = 2_500 + (balance - low) * 16_500 / max(high - low, 1.0)
     where = np.array(["aero bars", "upright"])[
         (cell_cue % 4 == 2).astype(int) if positions > 1 else np.zeros(cell_cue.size, int)
     ]
