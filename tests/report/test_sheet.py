@@ -77,26 +77,26 @@ def words_on(page: pypdf.PageObject) -> list[Word]:
     stack: list[tuple[float, float]] = []
     at, pen, start, text, top = (0.0, 0.0), 0.0, 0.0, "", 0.0
     font, size = None, 0.0
-    for given, operator in ContentStream(page.get_contents(), page.pdf).operations:
+    for operands, operator in ContentStream(page.get_contents(), page.pdf).operations:
         match operator:
             case b"q":
                 stack.append(at)
             case b"Q":
                 at = stack.pop()
             case b"cm":
-                assert [float(value) for value in given[:4]] == [1, 0, 0, 1]
-                at = (at[0] + float(given[4]), at[1] + float(given[5]))
+                assert [float(value) for value in operands[:4]] == [1, 0, 0, 1]
+                at = (at[0] + float(operands[4]), at[1] + float(operands[5]))
             case b"BT":
                 pen = start = 0.0
                 text, top = "", 0.0
             case b"Tf":
-                font, size = fonts[given[0]], float(given[1])
+                font, size = fonts[operands[0]], float(operands[1])
             case b"Td":
-                start += float(given[0])
+                start += float(operands[0])
                 pen = start
             case b"Tj" | b"TJ":
                 assert font is not None
-                for part in given[0] if operator == b"TJ" else given:
+                for part in operands[0] if operator == b"TJ" else operands:
                     if not isinstance(part, (str, bytes)):
                         pen -= float(part) / 1000 * size
                         continue
