@@ -55,7 +55,7 @@ class Race:
     """One race.
 
     ``inputs`` is the race file with every default filled in, JSON-able; ``given`` what was
-    written, files merged, from which `pacing.race.options.vary` makes other races. ``options``
+    written, files merged, from which `pacing.race.vary` makes other races. ``options``
     are the overrides to compare, as written.
     """
 
