@@ -79,7 +79,9 @@ def part_of(lap: Lap, from_m: float | None, to_m: float | None) -> Lap:
     for key, at in (("course.from_km", start), ("course.to_km", end)):
         if not 0.0 <= at <= length:
             raise UnusableInputError(
-                f"{at / 1000:g}", key=key, expected=f"a place on the lap, 0 to {length / 1000:.2f}"
+                f"{at / 1000:g}",
+                key=key,
+                expected=f"a place on the lap, 0 to {length / 1000:.2f} km",
             )
     if end - start < 100.0:
         raise UnusableInputError(
