@@ -7,8 +7,6 @@ declaration is refused before the first entity could expand.
 
 from __future__ import annotations
 
-import codecs
-import re
 from array import array
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
@@ -18,6 +16,7 @@ from xml.parsers import expat
 
 import numpy as np
 
+from pacing.course.decode import as_utf8
 from pacing.course.track import Track
 from pacing.errors import UnusableInputError
 
@@ -31,13 +30,6 @@ _HEARD = {
     "time": ("trkpt", "rtept"),
     "name": ("trk", "rte", "metadata", "gpx"),
 }
-_MARKS = (
-    (codecs.BOM_UTF8, "utf-8"),
-    (codecs.BOM_UTF32_LE, "utf-32"),
-    (codecs.BOM_UTF32_BE, "utf-32"),
-    (codecs.BOM_UTF16_LE, "utf-16"),
-    (codecs.BOM_UTF16_BE, "utf-16"),
-)
 _CUT_OFF = {
     expat.errors.codes[message]
     for message in (
@@ -78,42 +70,13 @@ def read_gpx(data: bytes, file: Path) -> GpxFile:
     Raises UnusableInputError, with the line, on anything that is not well-formed GPX, on
     coordinates that are not numbers in range and on more than ``MOST_POINTS`` points.
     """
-    text, blank_lines = _as_utf8(data, file)
+    text, blank_lines = as_utf8(data, file)
     reader = _Reader(file, blank_lines)
     try:
         reader.parser.Parse(text, True)
     except expat.ExpatError as problem:
         raise _not_well_formed(problem, reader, text) from None
     return reader.result()
-
-
-def _as_utf8(data: bytes, file: Path) -> tuple[bytes, int]:
-    """The document in UTF-8, from its byte-order mark or declaration, and blank lines cut off."""
-    encoding = _encoding(data)
-    try:
-        decoded = data.decode(encoding)
-    except LookupError:
-        raise UnusableInputError(
-            f"unknown encoding '{encoding}'", file=file, line=1, mend="save the file as UTF-8"
-        ) from None
-    except UnicodeDecodeError:
-        # Names saved in an old single-byte encoding: the numbers are plain ASCII all the same.
-        decoded = data.decode("latin-1")
-    decoded = decoded.removeprefix("\ufeff")
-    stripped = decoded.lstrip()
-    return stripped.encode("utf-8", "replace"), decoded[: len(decoded) - len(stripped)].count("\n")
-
-
-def _encoding(data: bytes) -> str:
-    for mark, encoding in _MARKS:
-        if data.startswith(mark):
-            return encoding
-    declared = re.match(rb"\s*<\?xml[^>]*?encoding\s*=\s*[\"']([\w.:-]+)[\"']", data[:400])
-    if not declared:
-        return {b"<\0": "utf-16-le", b"\0<": "utf-16-be"}.get(data[:2], "utf-8")
-    encoding = declared.group(1).decode("ascii")
-    # A declaration that can be read byte by byte is not in these, whatever it says.
-    return "utf-8" if encoding.lower()[:6] in ("utf-16", "utf-32", "utf_16") else encoding
 
 
 class _Reader:
