@@ -7,6 +7,7 @@ it back. Nothing is ever deleted but files of the set's own names.
 
 from __future__ import annotations
 
+import errno
 import os
 import re
 import secrets
@@ -180,12 +181,14 @@ def _proven(place: Path, kind: OutputKind) -> bool:
 
 def _try_writing(place: Path) -> None:
     """Fails early where the folder beside could not be made."""
-    parent = place.parent
-    while not parent.exists():
-        parent = parent.parent
-    trial = parent / f".{place.name[:100]}.pacing-try-{secrets.token_hex(4)}"
-    trial.mkdir()
-    trial.rmdir()
+    if place.parent.is_dir():
+        trial = _new_name(place)
+        trial.mkdir()
+        trial.rmdir()
+        return
+    there = next(parent for parent in place.parents if parent.exists())
+    if not (there.is_dir() and os.access(there, os.W_OK | os.X_OK)):
+        raise PermissionError(errno.EACCES, os.strerror(errno.EACCES))
 
 
 def _with_parents(place: Path) -> list[Path]:
