@@ -7,7 +7,7 @@ from typing import Any
 
 from pacing.race.keys import LIST_MARK, NOT_YET, Key, lists_of, sections
 from pacing.race.lines import Path
-from pacing.race.nearest import did_you_mean, did_you_mean_key
+from pacing.race.nearest import did_you_mean, did_you_mean_anywhere, did_you_mean_key
 from pacing.race.origin import Origins, dotted, path_of, shown
 from pacing.race.value import checked_value
 
@@ -35,9 +35,10 @@ class Checked:
         """
         for name, value in self.given.items():
             if name not in TOP:
-                mend = did_you_mean(name, TOP)
-                what = "unknown table" if isinstance(value, dict) else "unknown key"
-                raise self.origins.error((name,), what, mend=mend)
+                if isinstance(value, dict | list):
+                    raise self.origins.error((name,), "unknown table", mend=did_you_mean(name, TOP))
+                mend = did_you_mean_anywhere(name)
+                raise self.origins.error((name,), "unknown key", mend=mend)
         self._refuse_what_is_not_built()
         return {name: self._section(name) for name in TOP if name != "options"}
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from difflib import SequenceMatcher
 
-from pacing.race.keys import sections
+from pacing.race.keys import LIST_MARK, sections
 
 LONGEST_COMPARED = 60
 
@@ -27,3 +27,10 @@ def did_you_mean_key(name: str, section: str, lists: Iterable[str] = ()) -> str:
     if elsewhere:
         return f"did you mean {elsewhere[0]}.{name}?"
     return did_you_mean(name, [*sections()[section], *lists])
+
+
+def did_you_mean_anywhere(name: str) -> str:
+    """The same for a key that stands outside all tables."""
+    homes = {key: section for section, keys in reversed(sections().items()) for key in keys}
+    key = nearest(name, homes)
+    return f"did you mean {homes[key].replace(LIST_MARK, '')}.{key}?"
