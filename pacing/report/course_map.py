@@ -19,6 +19,8 @@ from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
 from pacing.report import style, tables, words
+from pacing.report.label_places import Taken
+from pacing.report.lines_on_paper import lap_nodes, moved, on_paper
 from pacing.report.words import Units
 
 if TYPE_CHECKING:
@@ -32,10 +34,9 @@ WIDE_PT, HIGH_PT = 720.0, 560.0
 SIDE_PT = 170.0
 EDGE_PT = 44.0
 HEAD_PT = 40.0
-LINE_PT, LAPS_PT = 4.2, 20.0
-CASING_PT = 1.4
+LINE_PT, LAPS_PT = 4.2, 15.0
+CASING_PT = 1.2
 COLOURS = 64
-METRES_PER_DEGREE = 111_320.0
 
 
 class Wind(NamedTuple):
@@ -57,58 +58,24 @@ def figure(plan: Plan) -> Figure:
     title = style.drawable(tables.title(plan, units))
     paper.text(20, HIGH_PT - 26, title, fontsize=13, fontweight="bold")
     course = plan.race.course
-    at, points_per_m = on_paper(course.lat_deg, course.lon_deg)
+    room = (EDGE_PT, EDGE_PT, WIDE_PT - SIDE_PT - EDGE_PT, HIGH_PT - HEAD_PT - EDGE_PT)
+    at, points_per_m = on_paper(course.lat_deg, course.lon_deg, room)
     laps = lap_nodes(course.distance_m, course.lap_length_m, course.laps)
     line_pt = min(LINE_PT, LAPS_PT / len(laps))
-    shown = moved(at, laps, line_pt)
+    apart_pt = line_pt + 0.5 * CASING_PT
+    shown = moved(at, laps, apart_pt)
     trace = plan.trace
     asked = trace["critical_power_w"] * trace["power_share"]
     share = (trace["power_w"] / asked).to_numpy()
     scale = share_scale(trace["target_w"] / asked)
     _road(paper, shown, share, scale, laps, line_pt)
-    taken = Taken(shown)
-    _ends(paper, plan, shown, taken)
-    _kilometres(paper, plan, units, shown, taken)
+    taken = Taken(shown, (4.0, 24.0, WIDE_PT - SIDE_PT, HIGH_PT - HEAD_PT))
+    _ends(paper, plan, shown, taken, apart_pt * len(laps))
+    _kilometres(paper, plan, units, shown, taken, apart_pt * len(laps))
     _scale_bar(paper, points_per_m, units, len(laps))
     _wind(paper, mean_wind(trace))
     _colour_bar(picture, scale, below=bool(share.min() < (scale.vmin or 0.0)))
     return picture
-
-
-def on_paper(lat_deg: Array, lon_deg: Array) -> tuple[Array, float]:
-    """Points (N, 2) on the paper, north up, and points per metre."""
-    middle = np.radians(0.5 * (lat_deg.min() + lat_deg.max()))
-    turned = np.degrees(np.unwrap(np.radians(lon_deg)))
-    east = (turned - turned[0]) * METRES_PER_DEGREE * np.cos(middle)
-    north = (lat_deg - lat_deg[0]) * METRES_PER_DEGREE
-    room_x = WIDE_PT - SIDE_PT - 2 * EDGE_PT
-    room_y = HIGH_PT - HEAD_PT - 2 * EDGE_PT
-    scale = min(room_x / max(np.ptp(east), 1.0), room_y / max(np.ptp(north), 1.0))
-    x = (east - 0.5 * (east.min() + east.max())) * scale + EDGE_PT + room_x / 2
-    y = (north - 0.5 * (north.min() + north.max())) * scale + EDGE_PT + room_y / 2
-    return np.column_stack([x, y]), float(scale)
-
-
-def lap_nodes(distance_m: Array, lap_length_m: float, laps: int) -> list[tuple[int, int]]:
-    """First and last node of each lap."""
-    ends = np.searchsorted(distance_m, lap_length_m * np.arange(1, laps) - 1e-6)
-    edge = [0, *(int(end) for end in ends), distance_m.size - 1]
-    return [(a, b) for a, b in pairwise(edge) if b > a]
-
-
-def moved(at: Array, laps: list[tuple[int, int]], line_pt: float) -> Array:
-    """The line moved to the right of the direction of travel, each lap one line further."""
-    step = max(1, at.shape[0] // 2000)
-    before = at[np.maximum(np.arange(at.shape[0]) - step, 0)]
-    after = at[np.minimum(np.arange(at.shape[0]) + step, at.shape[0] - 1)]
-    along = after - before
-    long = np.hypot(along[:, 0], along[:, 1])
-    right = np.column_stack([along[:, 1], -along[:, 0]]) / np.maximum(long, 1e-9)[:, None]
-    apart = line_pt + 0.5 * CASING_PT
-    lane = np.zeros(at.shape[0])
-    for number, (first, last) in enumerate(laps):
-        lane[first : last + 1] = number
-    return np.asarray(at + right * (apart * (0.5 + lane))[:, None])
 
 
 def share_scale(target_share: pd.Series) -> Normalize:
@@ -145,43 +112,6 @@ def _road(
         )
 
 
-class Taken:
-    """Where the course and the labels already are, so that the next label finds a free place."""
-
-    def __init__(self, road: Array) -> None:
-        self.road = road
-        self.boxes: list[tuple[float, float, float, float]] = []
-
-    def cost(self, box: tuple[float, float, float, float]) -> float:
-        """How much of the road and of other labels a box would hide, or leave the paper."""
-        left, low, right, high = box
-        x, y = self.road[:, 0], self.road[:, 1]
-        hidden = ((x > left - 3) & (x < right + 3) & (y > low - 3) & (y < high + 3)).sum()
-        over = sum(left < b[2] and right > b[0] and low < b[3] and high > b[1] for b in self.boxes)
-        outside = left < 4 or right > WIDE_PT - SIDE_PT or low < 24 or high > HIGH_PT - HEAD_PT
-        return float(hidden) + 1e4 * over + 1e4 * outside
-
-    def place(self, at: Array, text: str, size: float, side: Array) -> tuple[float, float, float]:
-        """Left, baseline and cost of the best place around ``at``, best on ``side``; now taken."""
-        wide = style.text_width_mm(text, size * 0.257) / 25.4 * 72
-        high = 0.75 * size
-        best: tuple[float, tuple[float, float, float, float]] | None = None
-        for away in (9.0, 14.0, 20.0, 28.0):
-            for turn in np.arange(12) * np.pi / 6:
-                way = np.array([np.cos(turn), np.sin(turn)])
-                x, y = at + way * (away + 0.5 * np.array([wide, high]))
-                box = (x - wide / 2, y - high / 2, x + wide / 2, y + high / 2)
-                cost = self.cost(box) + 0.05 * away - 2.0 * float(way @ side)
-                if best is None or cost < best[0]:
-                    best = (cost, box)
-        assert best is not None
-        cost, box = best
-        if cost < 1e4:
-            left, low, right, top = box
-            self.boxes.append((left - 2, low - 2, right + 2, top + 2))
-        return box[0], box[1], cost
-
-
 def _mark(
     paper: Axes, at: Array, text: str, taken: Taken, side: Array, *, size: float, bold: bool
 ) -> None:
@@ -191,10 +121,10 @@ def _mark(
         paper.text(x, y, text, fontsize=size, fontweight="bold" if bold else "normal", zorder=6)
 
 
-def _ends(paper: Axes, plan: Plan, at: Array, taken: Taken) -> None:
+def _ends(paper: Axes, plan: Plan, at: Array, taken: Taken, wide_pt: float) -> None:
     """Start, finish and the slow points with a name."""
     course = plan.race.course
-    joined = bool(np.hypot(*(at[0] - at[-1])) < 12.0)
+    joined = bool(np.hypot(*(at[0] - at[-1])) < 10.0 + wide_pt)
     dots = (
         [(0.5 * (at[0] + at[-1]), "start and finish", "o")] if joined else [(at[0], "start", "o")]
     )
@@ -215,7 +145,9 @@ def _point(distance_m: Array, at: Array, where_m: float) -> Array:
     return np.array([np.interp(where_m, distance_m, at[:, axis]) for axis in (0, 1)])
 
 
-def _kilometres(paper: Axes, plan: Plan, units: Units, at: Array, taken: Taken) -> None:
+def _kilometres(
+    paper: Axes, plan: Plan, units: Units, at: Array, taken: Taken, wide_pt: float
+) -> None:
     """A tick at each kilometre of the first lap, or each few, with figures where there is room."""
     course = plan.race.course
     length = course.length_m if course.laps == 1 else course.lap_length_m
@@ -229,7 +161,7 @@ def _kilometres(paper: Axes, plan: Plan, units: Units, at: Array, taken: Taken) 
         behind = _point(course.distance_m, at, where - 40.0)
         along = ahead - behind
         side = np.array([along[1], -along[0]]) / max(float(np.hypot(*along)), 1e-9)
-        ends = np.array([here - side * LINE_PT * 0.9, here + side * LINE_PT * 0.9])
+        ends = np.array([here - 0.9 * LINE_PT * side, here + (wide_pt - 0.3 * LINE_PT) * side])
         paper.plot(ends[:, 0], ends[:, 1], color=style.INK, linewidth=1.1, zorder=4)
         _mark(paper, here, f"{mark:.0f}", taken, side, size=8.0, bold=False)
 

@@ -11,6 +11,7 @@ from matplotlib.ticker import MaxNLocator
 from numpy.typing import NDArray
 
 from pacing.report import style, tables, words
+from pacing.report.label_places import lanes
 from pacing.report.words import Units
 
 if TYPE_CHECKING:
@@ -109,21 +110,6 @@ def steps(edge: Array, value: Array) -> tuple[Array, Array]:
     return np.repeat(edge[inner], 2)[1:-1], np.repeat(value[inner[:-1]], 2)
 
 
-def lanes(middle_pt: Array, wide_pt: Array, count: int) -> Array:
-    """A lane (0 at the bottom) for each label so that labels in one lane keep apart.
-
-    Labels come left to right; where every lane is taken, the one that frees first is used.
-    """
-    free = np.full(count, -np.inf)
-    chosen = np.zeros(middle_pt.size)
-    for i in range(middle_pt.size):
-        left = middle_pt[i] - 0.5 * wide_pt[i]
-        lane = int(np.argmax(free <= left)) if (free <= left).any() else int(np.argmin(free))
-        chosen[i] = lane
-        free[lane] = middle_pt[i] + 0.5 * wide_pt[i]
-    return chosen
-
-
 def _high_pt(strip: int) -> float:
     """Height of a strip in points."""
     return SHARES[strip] / sum(SHARES) * (TOP - BOTTOM - GAP * 3) * HIGH_IN * 72
@@ -146,7 +132,7 @@ def _labels(
     strip_pt = (RIGHT - LEFT) * WIDE_IN * 72
     middle = (at - low) / (high - low) * strip_pt
     wide = np.array([style.text_width_mm(t, size * 0.257, bold=bold) / 25.4 * 72 for t in texts])
-    wide = wide + 4.0
+    wide = wide + 7.0
     middle = np.clip(middle, wide / 2, strip_pt - wide / 2)
     lane = lanes(middle, wide, 3)
     for x, row, text in zip(middle, lane, texts, strict=True):

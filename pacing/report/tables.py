@@ -122,9 +122,8 @@ def _cues(plan: Plan, units: Units) -> str:
     digits = words.cue_digits(plan.cues, units)
     for name, (_, cue) in zip(names, plan.cues.iterrows(), strict=True):
         at_m = 1000 * float(cue["from_km"])
-        line = (
-            f"{words.distance(at_m, units, digits):>6}  {_cut(words.seen(cue, units), seen_wide)}"
-        )
+        seen = _cut(words.seen_beside(cue, units), seen_wide)
+        line = f"{words.distance(at_m, units, digits):>6}  {seen}"
         if several:
             line += f"  {_cut(name, wide)}"
         pace = words.speed(float(cue["speed_kmh"]) / 3.6, units)
@@ -174,7 +173,7 @@ def _slow_places(plan: Plan, units: Units) -> str:
     kept = sorted(sorted(places, key=lambda item: item[2])[:MOST_SLOW_PLACES])
     lines = ["Slow places (where the road or your own limit holds the speed, not your power)"]
     for from_m, to_m, least in kept:
-        why = [s.note for s in plan.race.course.slow_points if from_m - 1 <= s.at_m <= to_m + 1]
+        why = [s.note for s in plan.race.course.slow_points if from_m - 20 <= s.at_m <= to_m + 20]
         note = f", {words.filled(why[0])}" if why and words.filled(why[0]) else ""
         where = f"{words.distance(from_m, units, 2)} to {words.distance(to_m, units, 2)}"
         pace = f"{words.speed(least, units, 0)} {units.speed}"

@@ -22,6 +22,8 @@ W_LEFT = "W′ left"
 MINUS = "−"
 NOTHING = "–"
 DAY_S = 86_400
+WORTH_SAYING_PCT = 1.0
+"""Mean gradient of a cue from which it is called a climb or a descent."""
 
 
 class Units(NamedTuple):
@@ -116,6 +118,11 @@ def seen(cue: pd.Series, units: Units = METRIC) -> str:
 
 
 def seen_beside(cue: pd.Series, units: Units = METRIC) -> str:
-    """As ``seen``, but empty where only the distance, printed beside it anyway, is known."""
+    """As ``seen``, for beside a distance: where nothing stands there, how the road goes on."""
     text = seen(cue, units)
-    return "" if text.startswith(f"{units.distance} ") else text
+    if not text.startswith(f"{units.distance} "):
+        return text
+    grade = float(cue["gradient_pct"])
+    if not abs(grade) >= WORTH_SAYING_PCT:
+        return ""
+    return f"{'climb' if grade > 0 else 'descent'} {number(abs(grade), 1)} %"
