@@ -11,6 +11,7 @@ from contextlib import suppress
 
 import typer
 
+from pacing.cli.course import course
 from pacing.cli.everywhere import Debug, Version
 from pacing.cli.new import new
 from pacing.cli.plan import plan
@@ -25,7 +26,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     no_args_is_help=True,
 )
-for command in (new, plan):
+for command in (new, course, plan):
     app.command()(command)
 
 
