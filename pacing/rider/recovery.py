@@ -91,3 +91,7 @@ class RecoveryLaw(ABC):
         capped: bool = True,
     ) -> Array:
         """`advance` for n riders at once: ``pools`` (k, n), the others (n,) or single."""
+
+    def return_rates_per_s(self, deficit_w: Array, *, w_prime_j: float) -> Array:
+        """1/τ of each pool (k, n) at ``deficit_w`` (n,) above 0; what is owed decays at it."""
+        return np.zeros((len(self.pool_shares), deficit_w.size))

@@ -75,6 +75,10 @@ class OnePool(RecoveryLaw):
         self._tau_for = tau_for
         self._constants = constants or {}
 
+    def return_rates_per_s(self, deficit_w: Array, *, w_prime_j: float) -> Array:
+        """See `RecoveryLaw.return_rates_per_s`."""
+        return 1.0 / self._tau_for(w_prime_j).tau_s(deficit_w)[None, :]
+
     @property
     def constants(self) -> dict[str, float]:
         """See `RecoveryLaw.constants`."""

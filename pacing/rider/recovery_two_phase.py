@@ -46,13 +46,19 @@ class TwoPhase(RecoveryLaw):
 
     @property
     def constants(self) -> dict[str, float]:
-        """See `RecoveryLaw.constants`."""
+        """See `RecoveryLaw.constants`; ``by_content`` 1 says that spending goes by content."""
         return {
             "quick_share": self.quick_share,
             "quick_tau_s": self.quick_tau_s,
             "slow_tau_scale": self.slow_tau.scale,
             "slow_tau_exponent": self.slow_tau.exponent,
+            "by_content": 1.0,
         }
+
+    def return_rates_per_s(self, deficit_w: Array, *, w_prime_j: float) -> Array:
+        """See `RecoveryLaw.return_rates_per_s`."""
+        quick = np.full(deficit_w.size, 1.0 / self.quick_tau_s)
+        return np.stack([quick, 1.0 / self.slow_tau.tau_s(deficit_w)])
 
     def advance(
         self,
