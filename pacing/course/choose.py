@@ -9,6 +9,7 @@ from pathlib import Path
 
 import numpy as np
 
+from pacing.course.extent import NoCourseError
 from pacing.course.geodesy import distance_between_m, distances_m
 from pacing.course.gpx import GpxFile
 from pacing.course.track import Track, joined
@@ -42,7 +43,7 @@ def choose_track(gpx: GpxFile, file: Path, track: str | int | None) -> Track:
                 whole,
                 notes=((f"{kind}s that join end to end read as one", f"{len(ridable)} {kind}s"),),
             )
-        raise UnusableInputError(
+        raise NoCourseError(
             f"{len(ridable)} {kind}s that do not join: {_listing(gpx)}",
             file=file,
             expected="one course",
@@ -53,7 +54,7 @@ def choose_track(gpx: GpxFile, file: Path, track: str | int | None) -> Track:
 
 def refuse_few_points(count: int, file: Path) -> UnusableInputError:
     """The error for a course without points, or with one."""
-    return UnusableInputError(
+    return NoCourseError(
         "no points" if count == 0 else "only one point",
         file=file,
         expected="a track or a route with at least two points",
@@ -71,7 +72,7 @@ def _named(gpx: GpxFile, lines: list[Track], file: Path, track: str | int) -> Tr
         return replace(chosen, name=chosen.name or gpx.name)
     near = get_close_matches(wanted, [line.name for line in lines if line.name], 1)
     found = "several tracks are" if by_name else "no track is"
-    raise UnusableInputError(
+    raise NoCourseError(
         f"{found} called '{wanted}': {_listing(gpx)}",
         file=file,
         key="course.track",

@@ -1,4 +1,4 @@
-"""How long a course may be."""
+"""Whether there is a course at all, and how long it may be."""
 
 from __future__ import annotations
 
@@ -8,20 +8,29 @@ LONGEST_M = 1_000_000.0
 SHORTEST_M = 100.0
 
 
-def refuse_length(length_m: float, file: object) -> UnusableInputError | None:
-    """Why a course is too long or too short for a plan: the error to raise, or None."""
-    if length_m > LONGEST_M:
-        return UnusableInputError(
-            f"{length_m / 1000:,.0f} km of road",
-            file=file,
-            expected=f"a course of at most {LONGEST_M / 1000:,.0f} km, all laps included",
-            mend="choose a part with course.from_km and course.to_km",
-        )
-    if length_m < SHORTEST_M:
-        return UnusableInputError(
-            f"{length_m:.0f} m of road",
-            file=file,
-            expected=f"a course of at least {SHORTEST_M:.0f} m",
-            mend="export the whole course",
-        )
-    return None
+class NoCourseError(UnusableInputError):
+    """The file is sound but holds no course: none, a mere spot, or several to choose from."""
+
+
+def refuse_long(length_m: float, file: object) -> UnusableInputError | None:
+    """Why a course is too long for a plan: the error to raise, or None."""
+    if length_m <= LONGEST_M:
+        return None
+    return UnusableInputError(
+        f"{length_m / 1000:,.0f} km of road",
+        file=file,
+        expected=f"a course of at most {LONGEST_M / 1000:,.0f} km, all laps included",
+        mend="choose a part with course.from_km and course.to_km",
+    )
+
+
+def refuse_short(length_m: float, file: object) -> NoCourseError | None:
+    """Why a course is too short for a plan: the error to raise, or None."""
+    if length_m >= SHORTEST_M:
+        return None
+    return NoCourseError(
+        f"{length_m:.0f} m of road",
+        file=file,
+        expected=f"a course of at least {SHORTEST_M:.0f} m",
+        mend="export the whole course",
+    )

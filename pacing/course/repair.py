@@ -16,6 +16,7 @@ from pacing.course.track import Track
 
 Array = NDArray[np.float64]
 
+OFF_THE_LINE = "points far off the line left out"
 SAME_POINT_M = 0.02
 
 
@@ -30,7 +31,7 @@ def repair(track: Track) -> tuple[Track, tuple[Repair, ...]]:
     off = outliers(track)
     repairs = [Repair(what, 0.0, 0.0, amount) for what, amount in track.notes]
     if off.any():
-        repairs.append(_off_the_line(track, off))
+        repairs += _off_the_line(track, off)
         track = track.kept(~off)
     track = replace(track, read_m=along_m(track.lat_deg, track.lon_deg))
     repairs += joined_segments(track)
@@ -40,20 +41,33 @@ def repair(track: Track) -> tuple[Track, tuple[Repair, ...]]:
     return track, (*repairs, *merged, *stood, *find_gaps(track), *heights)
 
 
-def _off_the_line(track: Track, off: NDArray[np.bool_]) -> Repair:
-    """One line for all points thrown off, with the furthest of them."""
-    kept = np.flatnonzero(~off)
-    thrown = np.flatnonzero(off)
-    nearest = kept[np.clip(np.searchsorted(kept, thrown), 0, len(kept) - 1)]
-    pairs = np.stack([thrown, nearest], axis=1).ravel()
-    far = float(np.max(distances_m(track.lat_deg[pairs], track.lon_deg[pairs])[::2]))
-    at = np.interp(thrown, kept, along_m(track.lat_deg[kept], track.lon_deg[kept])) / 1000.0
-    return Repair(
-        "points far off the line left out",
-        float(at[0]),
-        float(at[-1]),
-        f"{_points(len(thrown))}, up to {far / 1000:.1f} km off",
+def _off_the_line(track: Track, off: NDArray[np.bool_]) -> list[Repair]:
+    """One repair for each run of points thrown off, with how far the furthest of them lies."""
+    kept, thrown = np.flatnonzero(~off), np.flatnonzero(off)
+    # Of the kept points beside each run the nearer tells how far off it is.
+    after = np.searchsorted(kept, thrown)
+    far = np.minimum(
+        *(
+            _apart_m(track, thrown, kept[np.clip(beside, 0, len(kept) - 1)])
+            for beside in (after - 1, after)
+        )
     )
+    km = np.interp(thrown, kept, along_m(track.lat_deg[kept], track.lon_deg[kept])) / 1000.0
+    runs = np.split(np.arange(len(thrown)), np.flatnonzero(np.diff(thrown) > 1) + 1)
+    return [
+        Repair(
+            OFF_THE_LINE,
+            float(km[run[0]]),
+            float(km[run[-1]]),
+            f"{_points(len(run))}, up to {np.max(far[run]) / 1000:.1f} km off",
+        )
+        for run in runs
+    ]
+
+
+def _apart_m(track: Track, one: NDArray[np.intp], other: NDArray[np.intp]) -> Array:
+    pairs = np.stack([one, other], axis=1).ravel()
+    return distances_m(track.lat_deg[pairs], track.lon_deg[pairs])[::2]
 
 
 def _without_duplicates(track: Track) -> tuple[Track, list[Repair]]:

@@ -8,10 +8,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.course.course import CourseReport, CourseSpec
-from pacing.course.extent import refuse_length
+from pacing.course.extent import refuse_long
 from pacing.course.gaps import BRIDGED, refuse_wide_gaps
 from pacing.course.lap import Lap
 from pacing.course.missing import missing_share, refuse_missing_heights
+from pacing.course.repair import OFF_THE_LINE
+from pacing.course.summary import steepest_stretch
 from pacing.course.track import Track
 from pacing.errors import UnusableInputError
 
@@ -44,7 +46,7 @@ def refusals(found: Surveyed) -> tuple[UnusableInputError, ...]:
     return tuple(
         reason
         for reason in (
-            refuse_length(length * found.spec.laps, file),
+            refuse_long(length * found.spec.laps, file),
             None if found.spec.flat else refuse_missing_heights(found.track, file),
             refuse_wide_gaps(found.report.repairs, length, file),
             _refuse_scattered_points(found),
@@ -70,7 +72,8 @@ def _refuse_scattered_points(found: Surveyed) -> UnusableInputError | None:
 
 
 def _refuse_walls(found: Surveyed) -> UnusableInputError | None:
-    at, gradient = steepest(found.lap, 100.0)
+    wall = steepest_stretch(found.lap.road_m, found.lap.elevation_m, 100.0)
+    at, gradient = wall.middle_m, wall.gradient
     if abs(gradient) <= STEEPEST_BELIEVED:
         return None
     return UnusableInputError(
@@ -102,8 +105,13 @@ def _cautions_on_line(found: Surveyed) -> list[str]:
             f"{len(gaps)} gap{'s' * (len(gaps) > 1)} bridged by a straight line, the widest "
             f"{widest.amount} at km {widest.from_km:.1f}: bends and hills there are not known"
         )
-    thrown = [r for r in found.report.repairs if r.what.startswith("points far off")]
-    words += [f"{r.amount}, left out: check the line on the map" for r in thrown]
+    thrown = [repair for repair in found.report.repairs if repair.what == OFF_THE_LINE]
+    if thrown:
+        words.append(
+            f"points thrown off the line at km {thrown[0].from_km:.1f}"
+            f"{f' and {len(thrown) - 1} more places' if len(thrown) > 1 else ''} are left out "
+            f"({thrown[0].amount}): check that the course is whole"
+        )
     spacing = float(np.median(np.diff(1000.0 * found.track.read_km())))
     if spacing > SPARSE_M:
         words.append(f"points {spacing:.0f} m apart: bends and short hills between are not known")
@@ -127,7 +135,8 @@ def _cautions_on_heights(found: Surveyed) -> list[str]:
             )
     if report.gradient_error_pct > UNCERTAIN_PCT:
         words.append(f"gradients over 100 m are known to {report.gradient_error_pct:.1f} % only")
-    at, gradient = steepest(found.lap, 100.0)
+    wall = steepest_stretch(found.lap.road_m, found.lap.elevation_m, 100.0)
+    at, gradient = wall.middle_m, wall.gradient
     if STEEP < abs(gradient) <= STEEPEST_BELIEVED:
         words.append(
             f"100 m of {100 * gradient:.0f} % at km {at / 1000:.1f}: is the road really so steep?"
@@ -138,24 +147,6 @@ def _cautions_on_heights(found: Surveyed) -> list[str]:
     return words
 
 
-def steepest(lap: Lap, length_m: float) -> tuple[float, float]:
-    """Middle [m] and gradient of the steepest stretch of a length, up or down, on the road.
-
-    The gradient is rise over horizontal run; on a shorter lap, that of the whole.
-    """
-    return steepest_of(lap.road_m, lap.elevation_m, length_m)
-
-
-def steepest_of(road_m: Array, elevation_m: Array, length_m: float) -> tuple[float, float]:
-    """Middle [m] and gradient of the steepest stretch of a length on nodes (M+1,) of a road."""
-    length = min(length_m, float(road_m[-1]))
-    start = np.concatenate([road_m[road_m <= road_m[-1] - length], [road_m[-1] - length]])
-    rise = np.interp(start + length, road_m, elevation_m) - np.interp(start, road_m, elevation_m)
-    most = int(np.argmax(np.abs(rise)))
-    run = np.sqrt(max(length**2 - float(rise[most]) ** 2, 1e-9))
-    return float(start[most]) + length / 2, float(rise[most]) / float(run)
-
-
 def judged(found: Surveyed) -> tuple[CourseReport, tuple[UnusableInputError, ...]]:
     """The report with its cautions, reasons and verdict, and the refusals themselves."""
     refused = refusals(found)
@@ -163,7 +154,7 @@ def judged(found: Surveyed) -> tuple[CourseReport, tuple[UnusableInputError, ...
     report = replace(
         found.report,
         cautions=warned,
-        reasons=tuple(str(reason) for reason in refused),
+        reasons=tuple(f"{reason.found}; expected {reason.expected}" for reason in refused),
         verdict="unusable" if refused else "usable" if warned else "good",
     )
     return report, refused

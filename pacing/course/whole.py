@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.course.course import CourseSpec, Repair
-from pacing.course.extent import SHORTEST_M, refuse_length
+from pacing.course.extent import refuse_short
 from pacing.course.geodesy import along_m, distance_between_m, unwrapped_deg
 from pacing.course.heights import HeightProfile, smooth_heights
 from pacing.course.lap import Lap
@@ -39,8 +39,8 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
     Where finish and start are one place passed in one direction, the road is a loop and its
     heights join. Raises UnusableInputError for a line too short to smooth.
     """
-    length = float(along_m(track.lat_deg, track.lon_deg)[-1])
-    if length < SHORTEST_M and (too_short := refuse_length(length, spec.file)):
+    too_short = refuse_short(float(along_m(track.lat_deg, track.lon_deg)[-1]), spec.file)
+    if too_short is not None:
         raise too_short
     line = smooth_line(track.lat_deg, track.lon_deg, grid_m=CELL_M)
     profile = _profile(track, line, spec)
