@@ -7,10 +7,9 @@ so a card can be drawn on a page of its own, beside others, or checked without d
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from functools import lru_cache
 from typing import Literal
 
-from pacing.report.style import drawable, text_width_mm
+from pacing.report.style import drawable, fitted, text_width_mm
 
 
 @dataclass(frozen=True)
@@ -97,17 +96,6 @@ class Card:
     shape: Format
     texts: tuple[Text, ...] = ()
     lines: tuple[Line, ...] = field(default=())
-
-
-@lru_cache(maxsize=4096)
-def fitted(text: str, width_mm: float, capital_mm: float, bold: bool = False) -> str:
-    """``text`` cut with an ellipsis so that it is no wider than ``width_mm``."""
-    if text_width_mm(text, capital_mm, bold=bold) <= width_mm:
-        return text
-    kept = text
-    while kept and text_width_mm(f"{kept}…", capital_mm, bold=bold) > width_mm:
-        kept = kept[:-1]
-    return f"{kept.rstrip(' ,;-')}…"
 
 
 def folded(text: str, width_mm: float, capital_mm: float, most_lines: int) -> list[str]:

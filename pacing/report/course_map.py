@@ -55,8 +55,9 @@ def figure(plan: Plan) -> Figure:
     paper = picture.add_axes((0, 0, 1, 1))
     paper.set(xlim=(0, WIDE_PT), ylim=(0, HIGH_PT))
     paper.axis("off")
-    title = style.drawable(tables.title(plan, units))
-    paper.text(20, HIGH_PT - 26, title, fontsize=13, fontweight="bold")
+    title_at = (20 / WIDE_PT, 1 - 26 / HIGH_PT)
+    name, wide_mm = plan.race.course.name, 0.94 * WIDE_PT / 72 * style.MM_PER_INCH
+    style.title(picture, name, tables.ridden(plan, units), title_at, wide_mm)
     course = plan.race.course
     room = (EDGE_PT, EDGE_PT, WIDE_PT - SIDE_PT - EDGE_PT, HIGH_PT - HEAD_PT - EDGE_PT)
     at, points_per_m = on_paper(course.lat_deg, course.lon_deg, room)

@@ -46,7 +46,7 @@ class Taken:
 
     def place(self, at: Array, text: str, size: float, side: Array) -> tuple[float, float, float]:
         """Left, baseline and cost of the best place around ``at``, best on ``side``; now taken."""
-        wide = style.text_width_mm(text, size * 0.257) / 25.4 * 72
+        wide = style.text_width_mm(text, style.capitals(size)) / 25.4 * 72
         high = 0.75 * size
         best: tuple[float, tuple[float, float, float, float]] | None = None
         for away in (0.7 * size + 3.5 + extra for extra in (0.0, 5.0, 11.0, 19.0)):

@@ -32,15 +32,14 @@ def figure(plan: Plan) -> Figure:
     units = words.units_named(plan.race.plan.units)
     picture = Figure(figsize=(WIDE_IN, HIGH_IN))
     strips = _strips(picture, plan.race.course.length_m / units.m_per_distance)
-    picture.text(
-        LEFT, 0.968, style.drawable(tables.title(plan, units)), fontsize=13, fontweight="bold"
-    )
-    picture.text(
-        RIGHT,
-        0.968,
-        f"finish in {words.clock(plan.time_s)} at a mean of {tables.mean_power_w(plan):.0f} W",
-        fontsize=11,
-        ha="right",
+    said = f"finish in {words.clock(plan.time_s)} at a mean of {tables.mean_power_w(plan):.0f} W"
+    picture.text(RIGHT, 0.968, said, fontsize=11, ha="right")
+    style.title(
+        picture,
+        plan.race.course.name,
+        tables.ridden(plan, units),
+        (LEFT, 0.968),
+        0.66 * WIDE_IN * style.MM_PER_INCH,
     )
     _height(strips[0], plan, units)
     _power(strips[1], plan, units)
@@ -74,7 +73,8 @@ def _strips(picture: Figure, length: float) -> list[Axes]:
         axes.append(strip)
         top -= high + GAP
     axes[0].set_xlim(0.0, length)
-    axes[0].xaxis.set_major_locator(MaxNLocator(20, steps=[1, 2, 2.5, 5, 10]))
+    marks = MaxNLocator(20, steps=[1, 2, 2.5, 5, 10]).tick_values(0.0, length)
+    axes[0].set_xticks([mark for mark in marks if 0.0 <= mark <= length])
     axes[-1].tick_params(labelbottom=True)
     return axes
 
@@ -131,7 +131,9 @@ def _labels(
     low, high = strip.get_xlim()
     strip_pt = (RIGHT - LEFT) * WIDE_IN * 72
     middle = (at - low) / (high - low) * strip_pt
-    wide = np.array([style.text_width_mm(t, size * 0.257, bold=bold) / 25.4 * 72 for t in texts])
+    wide = np.array(
+        [style.text_width_mm(t, style.capitals(size), bold=bold) / 25.4 * 72 for t in texts]
+    )
     wide = wide + 7.0
     middle = np.clip(middle, wide / 2, strip_pt - wide / 2)
     lane = lanes(middle, wide, 3)

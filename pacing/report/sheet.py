@@ -29,7 +29,6 @@ from pacing.report.card import (
     Text,
     columns,
     crop_marks,
-    fitted,
     folded,
     heading,
     row_height_mm,
@@ -176,7 +175,7 @@ def _back(plan: Plan, shape: Format, units: Units, at: Columns) -> Card:
     y = bar + 2.0 + small
     texts.append(Text(left, y, f"{CHECK_BAR_MM:.0f} mm: print at 100 %", small))
     said = f"letters {small:.1f} mm, powers {at.power_mm:.1f} mm"
-    texts.append(Text(left, y + shape.line_mm, fitted(said, right - left, small), small))
+    texts.append(Text(left, y + shape.line_mm, style.fitted(said, right - left, small), small))
     return Card(shape, tuple(texts), tuple(lines))
 
 

@@ -14,6 +14,7 @@ from typing import Any
 
 import matplotlib as mpl
 from matplotlib.axes import Axes
+from matplotlib.figure import Figure
 from matplotlib.font_manager import FontProperties, findfont, get_font
 from matplotlib.textpath import text_to_path
 
@@ -24,6 +25,7 @@ FILL = "#dedede"
 PAPER = "#ffffff"
 DESK = "#ececec"
 COLOUR_MAP = "cividis"
+TITLE_PT = 13.0
 
 FONT = "DejaVu Sans"
 CAPITAL_EM = 0.729
@@ -86,6 +88,11 @@ def inches(length_mm: float) -> float:
     return length_mm / MM_PER_INCH
 
 
+def capitals(size_pt: float) -> float:
+    """Height (mm) of capitals and figures of a font size (pt)."""
+    return size_pt * CAPITAL_EM / POINTS_PER_INCH * MM_PER_INCH
+
+
 def points_for(capital_mm: float) -> float:
     """Font size (pt) whose capitals and figures are ``capital_mm`` high."""
     return capital_mm / CAPITAL_EM / MM_PER_INCH * POINTS_PER_INCH
@@ -97,6 +104,17 @@ def text_width_mm(text: str, capital_mm: float, *, bold: bool = False) -> float:
         text, _font(bold, points_for(capital_mm)), False
     )
     return float(width) / POINTS_PER_INCH * MM_PER_INCH
+
+
+@lru_cache(maxsize=4096)
+def fitted(text: str, width_mm: float, capital_mm: float, bold: bool = False) -> str:
+    """``text`` cut with an ellipsis so that it is no wider than ``width_mm``."""
+    if text_width_mm(text, capital_mm, bold=bold) <= width_mm:
+        return text
+    kept = text
+    while kept and text_width_mm(f"{kept}…", capital_mm, bold=bold) > width_mm:
+        kept = kept[:-1]
+    return f"{kept.rstrip(' ,;-')}…"
 
 
 @lru_cache(maxsize=64)
@@ -119,6 +137,15 @@ def drawable(text: str) -> str:
     """
     plain = " ".join(text.split())
     return "".join(letter if ord(letter) in _glyphs() else "?" for letter in plain)
+
+
+def title(figure: Figure, name: str, after: str, at: tuple[float, float], width_mm: float) -> None:
+    """The picture's title at a place in figure fractions; a long name is cut to ``width_mm``."""
+    capital_mm = capitals(TITLE_PT)
+    rest = f", {after}"
+    left_mm = width_mm - text_width_mm(rest, capital_mm, bold=True)
+    text = fitted(drawable(name) or "course", left_mm, capital_mm, True) + rest
+    figure.text(*at, text, fontsize=TITLE_PT, fontweight="bold")
 
 
 def quiet_axes(axes: Axes) -> None:

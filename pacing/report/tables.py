@@ -42,17 +42,16 @@ def cautions(plan: Plan) -> tuple[str, ...]:
 
 def title(plan: Plan, units: Units) -> str:
     """Course, length and start in one line."""
-    course = plan.race.course
-    text = f"{words.filled(course.name) or 'course'}, {length_text(plan, units)}"
-    start = plan.race.plan.start_clock_s
-    return text if start is None else f"{text}, start {words.day_clock(start)}"
+    return f"{words.filled(plan.race.course.name) or 'course'}, {ridden(plan, units)}"
 
 
-def length_text(plan: Plan, units: Units) -> str:
-    """Length of the course, with its laps where there are several."""
+def ridden(plan: Plan, units: Units) -> str:
+    """Length of the course, with its laps where there are several, and the start."""
     course = plan.race.course
     text = f"{words.distance(course.length_m, units, 2)} {units.distance}"
-    return text if course.laps == 1 else f"{text} in {course.laps} laps"
+    text = text if course.laps == 1 else f"{text} in {course.laps} laps"
+    start = plan.race.plan.start_clock_s
+    return text if start is None else f"{text}, start {words.day_clock(start)}"
 
 
 def mean_power_w(plan: Plan) -> float:

@@ -22,7 +22,8 @@ from hypothesis import strategies as st
 from pypdf.generic import ContentStream
 
 from pacing.report import sheet, style, words
-from pacing.report.card import STEM_CARD, Card, fitted, folded
+from pacing.report.card import STEM_CARD, Card, folded
+from pacing.report.style import fitted
 
 MM = 25.4 / 72.0
 
