@@ -62,7 +62,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         _discard_output()
     except OSError as problem:
         _discard_output()
-        return _say(f"standard output cannot be written ({problem.strerror}).", UNUSABLE)
+        return _say(f"standard output: cannot be used ({problem.strerror}).", UNUSABLE)
     return status
 
 
@@ -84,6 +84,10 @@ def _run(arguments: list[str], *, debug: bool) -> int:
     except BrokenPipeError:
         _discard_output()
         return DONE
+    except OSError as problem:
+        _trace(debug)
+        where = problem.filename or "standard output"
+        return _say(f"{where}: cannot be used ({problem.strerror or problem}).", UNUSABLE)
     except Exception as problem:
         if hasattr(problem, "format_message"):
             return _usage(problem)

@@ -51,13 +51,14 @@ def plan(
     Example:
       pacing plan my-race/race.toml -o sunday --start 10:42
     """
-    from pacing.plan import plan_race
     from pacing.race import load_race
     from pacing.report.output_set import make_ready
 
     loaded = load_race(race, air=air, start=start, cues=cues)
     folder = output or race.with_name(f"{race.stem}-plan")
     make_ready(folder)
+    from pacing.plan import plan_race
+
     planned = plan_race(loaded)
     planned.save(folder)
     print_result(lambda: _text(planned, folder), planned.to_json_dict, as_json=json)
