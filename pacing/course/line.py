@@ -131,6 +131,18 @@ def _most_noise_m(points: Array) -> float:
     return min(6.0 * float(np.quantile(aside, 0.7)), _MOST_NOISE_M)
 
 
+def chord_headings_rad(line: Line) -> Array:
+    """Headings of the chords between knots (K-1,), clockwise from north, unwrapped."""
+    step = np.diff(line.knot_m, axis=0)
+    up = line.knot_m[:-1] + line.knot_m[1:]
+    up /= np.linalg.norm(up, axis=1)[:, None]
+    east = np.array([-up[0, 1], up[0, 0], 0.0]) / max(np.hypot(up[0, 0], up[0, 1]), 1e-12)
+    first = np.arctan2(step[0] @ east, step[0] @ np.cross(up[0], east))
+    right = -np.sum(np.cross(step[:-1], step[1:]) * up[1:], axis=1)
+    turn = np.arctan2(right, np.sum(step[:-1] * step[1:], axis=1))
+    return np.asarray(first + np.concatenate(([0.0], np.cumsum(turn))))
+
+
 def _telling_points(points: Array) -> Index:
     """Indices of the points that are neither repeated nor on the straight between neighbours."""
     kept = np.arange(points.shape[0], dtype=np.intp)
@@ -245,15 +257,15 @@ def _solve(bands: Array, stiffness: float, raw: Array) -> tuple[Array, float]:
 def _likeliest_stiffness(raw: Array, rows: Array) -> float:
     """Stiffness (m³ scale) with the greatest restricted likelihood."""
     bands = _normal_bands(rows)
-    free = raw.shape[0] - 2
+    free = int(raw.shape[0]) - 2
 
     def unlikely(log_stiffness: float) -> float:
         try:
             place, log_determinant = _solve(bands, float(np.exp(log_stiffness)), raw)
         except LinAlgError:
             return np.inf
-        left = float(np.sum(raw * (raw - place)))
-        return free * float(np.log(max(left, 1e-9)) - log_stiffness) + log_determinant
+        left = max(float(np.sum(raw * (raw - place))), 1e-9)
+        return free * (float(np.log(left)) - log_stiffness) + log_determinant
 
     scale = -np.log(np.median(bands[2]))
     grid = scale + np.log(10.0) * np.arange(-3.0, 9.0)
