@@ -73,7 +73,7 @@ def _strips(picture: Figure, length: float) -> list[Axes]:
         axes.append(strip)
         top -= high + GAP
     axes[0].set_xlim(0.0, length)
-    marks = MaxNLocator(20, steps=[1, 2, 2.5, 5, 10]).tick_values(0.0, length)
+    marks = MaxNLocator(16, steps=[1, 2, 5, 10]).tick_values(0.0, length)
     axes[0].set_xticks([mark for mark in marks if 0.0 <= mark <= length])
     axes[-1].tick_params(labelbottom=True)
     return axes

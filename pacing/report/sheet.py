@@ -64,7 +64,7 @@ def cue_rows(plan: Plan, units: Units) -> list[Row]:
     several = plan.cues["position"].nunique() > 1
     checks = checkpoints(plan)
     rows, last = [], ""
-    for i, (_, cue) in enumerate(plan.cues.iterrows()):
+    for i, (_, cue) in enumerate(tables.cues_as_said(plan).iterrows()):
         name = words.filled(cue["position"])
         rows.append(
             Row(

@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 WIDTH = 80
 MOST_SPLITS = 8
 MOST_SLOW_PLACES = 8
+MERGED_M = 200.0
 
 
 def plan_text(plan: Plan) -> str:
@@ -37,7 +38,7 @@ def plan_text(plan: Plan) -> str:
 
 def cautions(plan: Plan) -> tuple[str, ...]:
     """What must be said with every plan, then what this one gives cause to say."""
-    return tuple(dict.fromkeys((*words.CAUTIONS, *plan.cautions)))
+    return tuple(dict.fromkeys(map(words.sentence, (*words.CAUTIONS, *plan.cautions))))
 
 
 def title(plan: Plan, units: Units) -> str:
@@ -119,7 +120,7 @@ def _cues(plan: Plan, units: Units) -> str:
     unit += f"{'W':>8}{units.speed:>8}{'h:mm:ss':>10}{'kJ':>9}"
     lines = [head, unit]
     digits = words.cue_digits(plan.cues, units)
-    for name, (_, cue) in zip(names, plan.cues.iterrows(), strict=True):
+    for name, (_, cue) in zip(names, cues_as_said(plan).iterrows(), strict=True):
         at_m = 1000 * float(cue["from_km"])
         seen = _cut(words.seen_beside(cue, units), seen_wide)
         line = f"{words.distance(at_m, units, digits):>6}  {seen}"
@@ -152,17 +153,39 @@ def _splits(plan: Plan, units: Units) -> str:
     return "\n".join(["Splits", f"{head}", *(f"{row[:16]}{row[16:]:>12}" for row in rows)])
 
 
-def slow_places(trace: pd.DataFrame) -> list[tuple[float, float, float]]:
-    """Stretches ridden at a limit of speed: from (m), to (m), lowest speed (m/s)."""
+def cues_as_said(plan: Plan) -> pd.DataFrame:
+    """The cues, with the speed (m/s) of a limit that holds one back for most of its time."""
+    trace = plan.trace
+    at_limit, _ = _at_limit(trace)
+    time, speed = trace["time_s"].to_numpy(), trace["speed_to_m_s"].to_numpy()
+    starts = np.searchsorted(trace["from_m"], plan.cues["from_m"].to_numpy() - 1e-6)
+    held = np.add.reduceat(np.where(at_limit, time, 0.0), starts)
+    fast = np.maximum.reduceat(np.where(at_limit, speed, 0.0), starts)
+    return plan.cues.assign(
+        held_m_s=np.where(held > 0.5 * np.add.reduceat(time, starts), fast, np.nan)
+    )
+
+
+def _at_limit(trace: pd.DataFrame) -> tuple[np.ndarray, np.ndarray]:
+    """Which cells end at their limit of speed, and the speed there."""
     speed = trace["speed_to_m_s"].to_numpy()
     limit = trace["speed_limit_to_m_s"].to_numpy()
-    at_limit = np.isfinite(limit) & (speed >= limit * (1 - 1e-6))
+    return np.isfinite(limit) & (speed >= limit * (1 - 1e-6)), speed
+
+
+def slow_places(trace: pd.DataFrame) -> list[tuple[float, float, float]]:
+    """Stretches ridden at a limit of speed: from (m), to (m), lowest speed (m/s)."""
+    at_limit, speed = _at_limit(trace)
     edge = np.flatnonzero(np.diff(np.concatenate([[0], at_limit.astype(int), [0]])))
     from_m, to_m = trace["from_m"].to_numpy(), trace["to_m"].to_numpy()
-    return [
-        (float(from_m[a]), float(to_m[b - 1]), float(speed[a:b].min()))
-        for a, b in zip(edge[::2], edge[1::2], strict=True)
-    ]
+    found: list[tuple[float, float, float]] = []
+    for a, b in zip(edge[::2], edge[1::2], strict=True):
+        begin, end, least = float(from_m[a]), float(to_m[b - 1]), float(speed[a:b].min())
+        if found and begin - found[-1][1] <= MERGED_M:
+            begin, _, before = found.pop()
+            least = min(before, least)
+        found.append((begin, end, least))
+    return found
 
 
 def _slow_places(plan: Plan, units: Units) -> str:
@@ -170,13 +193,13 @@ def _slow_places(plan: Plan, units: Units) -> str:
     if not places:
         return ""
     kept = sorted(sorted(places, key=lambda item: item[2])[:MOST_SLOW_PLACES])
-    lines = ["Slow places (where the road or your own limit holds the speed, not your power)"]
+    lines = ["Where the road or your own limit holds the speed, not your power"]
     for from_m, to_m, least in kept:
         why = [s.note for s in plan.race.course.slow_points if from_m - 20 <= s.at_m <= to_m + 20]
         note = f", {words.filled(why[0])}" if why and words.filled(why[0]) else ""
         where = f"{words.distance(from_m, units, 2)} to {words.distance(to_m, units, 2)}"
-        pace = f"{words.speed(least, units, 0)} {units.speed}"
-        lines.append(_cut(f"  {units.distance} {where}: down to {pace}{note}", WIDTH).rstrip())
+        pace = f"no faster than {words.speed(least, units, 0)} {units.speed}"
+        lines.append(_cut(f"  {units.distance} {where}: {pace}{note}", WIDTH).rstrip())
     if len(places) > len(kept):
         lines.append(f"  and {len(places) - len(kept)} less slow: see trace.csv")
     return "\n".join(lines)

@@ -96,6 +96,13 @@ def filled(text: object) -> str:
     return " ".join(str(text).split())
 
 
+def sentence(text: str) -> str:
+    """``text`` with a capital and a full stop."""
+    plain = filled(text)
+    end = "" if plain.endswith((".", "!", "?")) else "."
+    return f"{plain[:1].upper()}{plain[1:]}{end}" if plain else ""
+
+
 def cue_digits(cues: pd.DataFrame, units: Units = METRIC) -> int:
     """Decimals a cue's place needs to be printed as it was planned: one or two."""
     tenths = cues["from_km"].to_numpy() * 10_000.0 / units.m_per_distance
@@ -118,11 +125,17 @@ def seen(cue: pd.Series, units: Units = METRIC) -> str:
 
 
 def seen_beside(cue: pd.Series, units: Units = METRIC) -> str:
-    """As ``seen``, for beside a distance: where nothing stands there, how the road goes on."""
+    """As ``seen``, for beside a distance: where nothing stands there, how the road goes on.
+
+    ``held_m_s``, where a cue has it, is a limit of speed that decides most of it.
+    """
     text = seen(cue, units)
-    if not text.startswith(f"{units.distance} "):
+    if text.startswith(f"{units.distance} "):
+        grade = float(cue["gradient_pct"])
+        way = "climb" if grade > 0 else "descent"
+        text = f"{way} {number(abs(grade), 1)} %" if abs(grade) >= WORTH_SAYING_PCT else ""
+    held = cue.get("held_m_s")
+    if held is None or not math.isfinite(held):
         return text
-    grade = float(cue["gradient_pct"])
-    if not abs(grade) >= WORTH_SAYING_PCT:
-        return ""
-    return f"{'climb' if grade > 0 else 'descent'} {number(abs(grade), 1)} %"
+    most = f"at most {speed(held, units, 0)} {units.speed}"
+    return f"{text}, {most}" if text else most

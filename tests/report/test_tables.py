@@ -63,7 +63,17 @@ def test_a_plan_slower_than_the_constant_target_is_not_called_faster():
 
 def test_slow_places_are_named_with_speed_and_note(make_plan):
     text = tables.plan_text(make_plan(shape="out and back", length_m=16_100.0))
-    assert "down to 15 km/h, dead turn" in text
+    assert "no faster than 15 km/h, dead turn" in text
+
+
+def test_a_cue_spent_mostly_at_a_limit_names_the_limit(make_plan):
+    plan = make_plan(cues=4)
+    first = plan.trace["from_m"] < plan.cues["to_m"].iloc[0]
+    plan.trace.loc[first, "speed_limit_to_m_s"] = plan.trace.loc[first, "speed_to_m_s"]
+    said = tables.cues_as_said(plan)["held_m_s"].to_numpy()
+    assert said[0] == plan.trace.loc[first, "speed_to_m_s"].max()
+    assert not (said[1:] > 0).any()
+    assert "start, at most" in tables.plan_text(plan)
 
 
 def test_splits_are_few_and_at_whole_kilometres(make_plan):

@@ -65,6 +65,8 @@ def cue(**columns: object) -> pd.Series:
         ({"gradient_pct": 4.26}, "km 12.5", "climb 4.3 %"),
         ({"gradient_pct": -2.0}, "km 12.5", "descent 2.0 %"),
         ({"gradient_pct": 0.9}, "km 12.5", ""),
+        ({"words": "crest", "held_m_s": 20.0}, "over the top", "over the top, at most 72 km/h"),
+        ({"held_m_s": float("nan")}, "km 12.5", ""),
     ],
 )
 def test_a_cue_is_told_by_what_stands_there_else_by_the_kilometre_or_the_road(
