@@ -12,6 +12,7 @@ from pacing.race.check import Checked
 from pacing.race.lines import Path
 from pacing.race.origin import quoted
 from pacing.rider import LONG_DECLINE_SHARE
+from pacing.rider.power_time import three_parameter_power_w, two_parameter_power_w
 
 FIRST_30_S_SHARE = 1.3
 RESERVE_KJ = 2.5
@@ -105,14 +106,16 @@ def _power(rider: dict[str, Any], plan: dict[str, Any], checked: Checked) -> Non
 
 
 def _held_w(rider: Mapping[str, Any]) -> float:
-    """Power that can be held for three minutes, from the rider's own fit (Source: morton-1996)."""
-    critical, w_prime_j, peak = (
-        rider["critical_power_w"], rider["w_prime_kj"] * 1000.0, rider["peak_power_w"]
-    )  # fmt: skip
-    if rider["fit_form"] == "three-parameter" and w_prime_j:
-        return float(critical + w_prime_j / (HELD_S + w_prime_j / (peak - critical)))
-    held = critical + w_prime_j / HELD_S
-    return float(held if peak is None else min(held, peak))
+    """Power that can be held for three minutes, by the rider's own fit."""
+    fit = {
+        "critical_power_w": rider["critical_power_w"],
+        "w_prime_j": rider["w_prime_kj"] * 1000.0,
+    }
+    peak = rider["peak_power_w"]
+    if rider["fit_form"] == "three-parameter":
+        return float(three_parameter_power_w(HELD_S, **fit, peak_power_w=peak))
+    held = float(two_parameter_power_w(HELD_S, **fit))
+    return held if peak is None else min(held, peak)
 
 
 def _bike(bike: dict[str, Any], checked: Checked) -> None:
