@@ -26,7 +26,7 @@ class Checked:
     def caution(self, path: Path, words: str) -> None:
         """Note that a value is usable but remarkable."""
         origin = self.origins.of(path)
-        self.cautions.append(f"{origin.option or dotted(path)}: {words}")
+        self.cautions.append(f"Check {origin.option or dotted(path)}: {words}.")
 
     def table(self) -> dict[str, Any]:
         """Every section checked, fixed defaults filled in, absent keys None.

@@ -90,7 +90,7 @@ def _number(
     if key.usual_low is not None and key.usual_high is not None:
         low, high = key.usual_low, key.usual_high
         if not low <= number <= high:
-            caution(path, f"{number:g} is at the edge: {low:g} to {high:g} is usual")
+            caution(path, f"{number:g} is at the edge, {low:g} to {high:g} is usual")
     return number
 
 

@@ -189,7 +189,7 @@ def test_surroundings_that_are_not_given_are_said_to_be_assumed(
 ) -> None:
     text = small_race.replace('surroundings = "farmland"\n', "")
     assert load_race(write_race(text)).cautions == (
-        'air.surroundings: not given, so "farmland" (about half the forecast wind)',
+        'Check air.surroundings: not given, so "farmland" (about half the forecast wind).',
     )
     at_the_rider = load_race(write_race(text + "wind_height_m = 2\n"))
     assert at_the_rider.cautions == ()
@@ -213,3 +213,11 @@ def test_a_race_cannot_be_changed(write_race: Write) -> None:
     race = load_race(write_race())
     with pytest.raises(AttributeError):
         race.plan.dry = False  # type: ignore[misc]
+
+
+def test_a_value_at_the_edge_gives_a_caution(write_race: Write, small_race: str) -> None:
+    race = load_race(write_race(small_race.replace("= 72.0", "= 130")), cues=90)
+    assert race.cautions == (
+        "Check rider.mass_kg: 130 is at the edge, 40 to 120 is usual.",
+        "Check --cues: 90 is at the edge, 1 to 60 is usual.",
+    )
