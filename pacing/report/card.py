@@ -6,10 +6,16 @@ so a card can be drawn on a page of its own, beside others, or checked without d
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass, field
 from typing import Literal
 
 from pacing.report.style import drawable, fitted, text_width_mm
+
+_WHERE_TO_BREAK = re.compile(
+    r"(?<!\d)\s+|\s+(?!(?:%|W|kJ|km/h|mph|km|mile|mm|m|s|hPa)(?:[\s,.;:)]|$))"
+)
+"""Between words, but not between a figure and its unit."""
 
 
 @dataclass(frozen=True)
@@ -101,7 +107,7 @@ class Card:
 def folded(text: str, width_mm: float, capital_mm: float, most_lines: int) -> list[str]:
     """``text`` on at most ``most_lines`` lines, the last one cut where it does not fit."""
     lines: list[str] = []
-    left = text.split()
+    left = _WHERE_TO_BREAK.split(text.strip()) if text.strip() else []
     while left and len(lines) < most_lines:
         if len(lines) == most_lines - 1:
             lines.append(fitted(" ".join(left), width_mm, capital_mm))

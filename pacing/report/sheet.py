@@ -151,6 +151,7 @@ def _header(
 
 
 def _back(plan: Plan, shape: Format, units: Units, at: Columns) -> Card:
+    """Cautions first, cut if need be; then what to expect, as far as whole sentences fit."""
     small, margin = shape.small_mm, shape.margin_mm
     wide = shape.width_mm - 2 * margin
     texts = heading(
@@ -158,14 +159,17 @@ def _back(plan: Plan, shape: Format, units: Units, at: Columns) -> Card:
     )
     y = margin + small + 5.0
     bottom = shape.height_mm - margin - 12.5
-    for sentence in (*tables.cautions(plan), *tables.summary(plan, units)):
+    told = [(text, True) for text in tables.cautions(plan)]
+    told += [(text, False) for text in tables.summary(plan, units)]
+    for sentence, must in told:
         room = int((bottom - y) / shape.line_mm) + 1
-        if room < 1:
-            break
-        for line in folded(style.drawable(sentence), wide, small, room):
+        lines_of = folded(style.drawable(sentence), wide, small, 99)
+        if len(lines_of) > room:
+            lines_of = folded(style.drawable(sentence), wide, small, room) if must else []
+        for line in lines_of:
             texts.append(Text(margin, y, line, small))
             y += shape.line_mm
-        y += 1.3
+        y += 1.3 if lines_of else 0.0
     bar = shape.height_mm - margin - 8.6
     left = (shape.width_mm - CHECK_BAR_MM) / 2
     right = shape.width_mm - margin

@@ -133,7 +133,7 @@ def seen_beside(cue: pd.Series, units: Units = METRIC) -> str:
     if text.startswith(f"{units.distance} "):
         grade = float(cue["gradient_pct"])
         way = "climb" if grade > 0 else "descent"
-        text = f"{way} {number(abs(grade), 1)} %" if abs(grade) >= WORTH_SAYING_PCT else ""
+        text = f"{way} {number(abs(grade))} %" if abs(grade) >= WORTH_SAYING_PCT else ""
     held = cue.get("held_m_s")
     if held is None or not math.isfinite(held):
         return text

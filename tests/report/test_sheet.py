@@ -290,3 +290,9 @@ def test_text_is_cut_with_an_ellipsis_only_where_it_does_not_fit():
     lines = folded("second left after the old creamery", 20.0, 2.2, 2)
     assert len(lines) == 2
     assert folded("", 20.0, 2.2, 2) == []
+    assert folded("descent 6.3 %, at most 70 km/h", 16.0, 2.2, 4) == [
+        "descent",
+        "6.3 %, at",
+        "most",
+        "70 km/h",
+    ]
