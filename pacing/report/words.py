@@ -104,9 +104,9 @@ def sentence(text: str) -> str:
 
 
 def cue_digits(cues: pd.DataFrame, units: Units = METRIC) -> int:
-    """Decimals a cue's place needs to be printed as it was planned: one or two."""
+    """Decimals a cue's place needs to be printed as it was planned, within 6 m: one or two."""
     tenths = cues["from_km"].to_numpy() * 10_000.0 / units.m_per_distance
-    return 1 if bool((abs(tenths - tenths.round()) < 0.02).all()) else 2
+    return 1 if bool((abs(tenths - tenths.round()) < 0.06).all()) else 2
 
 
 SAID = {
