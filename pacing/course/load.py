@@ -47,6 +47,7 @@ def survey_course(spec: CourseSpec, *, cell_m: float = CELL_M) -> Survey:
     track, repairs = repair(as_read)
     whole = whole_road(track, repairs, spec)
     lap = _as_ridden(whole.lap, spec)
+    ridden = whole.ridden(*_bounds_m(whole.lap.length_m, spec))
     grid = on_grid(lap, cell_m)
     report = CourseReport(
         length_horizontal_m=float(lap.scale * lap.run_m[-1] * spec.laps),
@@ -55,17 +56,25 @@ def survey_course(spec: CourseSpec, *, cell_m: float = CELL_M) -> Survey:
         height_source=whole.profile.source,
         height_noise_m=whole.profile.noise_m,
         gradient_error_pct=whole.profile.gradient_error_pct,
-        repairs=whole.repairs,
+        repairs=ridden.repairs,
         raw_distance_m=lap.raw_distance_m,
         raw_elevation_m=lap.raw_elevation_m,
     )
-    report, refused = judged(Surveyed(spec, as_read, track, lap, report))
+    dropped = 1.0 - len(track) / as_read.places()
+    report, refused = judged(Surveyed(spec, ridden.track, dropped, lap, report))
     return Survey(_course(spec, track.name, lap, grid, report), refused)
 
 
 def climbing_m(elevation_m: Array) -> float:
     """Sum of all rises [m] between consecutive heights (M,) [m]."""
     return float(np.sum(np.maximum(np.diff(elevation_m), 0.0)))
+
+
+def _bounds_m(length_m: float, spec: CourseSpec) -> tuple[float, float]:
+    """From where to where [m] in the direction of the file the lap is ridden."""
+    start = 1000.0 * (spec.from_km or 0.0)
+    end = length_m if spec.to_km is None else 1000.0 * spec.to_km
+    return (length_m - end, length_m - start) if spec.reverse else (start, end)
 
 
 def _as_ridden(lap: Lap, spec: CourseSpec) -> Lap:

@@ -30,11 +30,14 @@ DRIFT_M = 5.0
 
 @dataclass(frozen=True)
 class Surveyed:
-    """What the verdict is made from: the track as read and repaired, the lap, the report so far."""
+    """What the verdict is made from: the repaired points of the ridden part, the lap, the report.
+
+    ``dropped`` is the share of the file's points that were left out or merged where they wander.
+    """
 
     spec: CourseSpec
-    as_read: Track
     track: Track
+    dropped: float
     lap: Lap
     report: CourseReport
 
@@ -50,21 +53,17 @@ def refusals(found: Surveyed) -> tuple[UnusableInputError, ...]:
             None if found.spec.flat else refuse_missing_heights(found.track, file),
             refuse_wide_gaps(found.report.repairs, length, file),
             _refuse_scattered_points(found),
-            None if found.spec.flat else _refuse_walls(found),
+            _refuse_walls(found),
         )
         if reason is not None
     )
 
 
 def _refuse_scattered_points(found: Surveyed) -> UnusableInputError | None:
-    new = np.diff(found.as_read.lat_deg) != 0.0
-    new |= np.diff(found.as_read.lon_deg) != 0.0
-    places = 1 + int(np.sum(new))
-    dropped = 1.0 - len(found.track) / places
-    if dropped <= MOST_POINTS_DROPPED:
+    if found.dropped <= MOST_POINTS_DROPPED:
         return None
     return UnusableInputError(
-        f"{100 * dropped:.0f} % of the points lie far off the line or wander on the spot",
+        f"{100 * found.dropped:.0f} % of the points lie far off the line or wander on the spot",
         file=found.spec.file,
         expected=f"at most {100 * MOST_POINTS_DROPPED:.0f} %",
         mend="draw the course in a route planner, or bring a recording with clear reception",

@@ -111,7 +111,7 @@ def test_points_on_the_straight_between_two_others_change_next_to_nothing(points
     written.append(points[-1])
     inserted = np.array(written)
     inserted[:, 1] = (inserted[:, 1] + 180.0) % 360.0 - 180.0
-    _same(_load(points), _load(inserted), length=2e-4, height_m=0.25, heading_deg=3.0)
+    _same(_load(points), _load(inserted), length=2e-4, height_m=0.5, heading_deg=3.0)
 
 
 @settings(max_examples=25, deadline=None)
