@@ -170,4 +170,10 @@ SOURCES: dict[str, Source] = {
         "spline smoothing problem",
         "Ann Stat 13(4):1378-1402",
     ),
+    "nocedal-wright-2006": Source(
+        "Nocedal, Wright",
+        2006,
+        "Numerical Optimization",
+        "Springer, second edition",
+    ),
 }
