@@ -66,14 +66,17 @@ def fit_power(
         chosen, used, why = _choose(duration, alike, form)
         chosen = _less_freedom(chosen, spent)
     flagged = np.zeros(duration.size, dtype=bool)
-    flagged[used] = off_curve(duration[used], alike[used])
+    flagged[used] = off_curve(chosen, duration[used], alike[used])
     two = (power_against_inverse_time, work_against_time, time_against_power)
-    forms = [_less_freedom(of(duration[used], alike[used]), spent) for of in two]
+    fair = used & (duration >= SHORT_S)
+    if np.unique(duration[fair]).size < 2:
+        fair = used
+    forms = [_less_freedom(of(duration[fair], alike[fair]), spent) for of in two]
     if chosen.name == "three-parameter":
         forms.append(chosen)
     errors: tuple[float | None, ...] = chosen.standard_errors or (None,) * 3
     peak = chosen.parameters[2] if len(chosen.parameters) == 3 else None
-    fitted = _curve_w(chosen, duration) * share
+    fitted = chosen.power_w(duration) * share
     return PowerFit(
         critical_power_w=chosen.critical_power_w,
         critical_power_se_w=errors[0],
@@ -124,8 +127,7 @@ def _choose(
                 f"{duration.size} efforts", expected="three durations for three parameters"
             )
         fit = three_parameter(duration[not_long], power[not_long])
-        asymptote_s = fit.w_prime_j / (fit.parameters[2] - fit.critical_power_w)
-        sound = 0.1 < asymptote_s < 0.99 * LONGEST_ASYMPTOTE_S
+        sound = 0.1 < fit.asymptote_s < 0.99 * LONGEST_ASYMPTOTE_S
         if form is not None or (sound and fit.parameters[2] <= HIGHEST_PEAK_W):
             why = (
                 "asked for" if form is not None else "an effort under 2 minutes needs a peak power"
@@ -151,13 +153,6 @@ def _less_freedom(fit: FormFit, spent: int) -> FormFit:
     wider = fit.degrees_of_freedom / free
     scatter = None if fit.scatter is None else fit.scatter * wider**0.5
     return FormFit(fit.name, fit.parameters, fit.covariance * wider, free, scatter)
-
-
-def _curve_w(fit: FormFit, duration: Array) -> Array:
-    k = 0.0
-    if len(fit.parameters) == 3:
-        k = fit.w_prime_j / (fit.parameters[2] - fit.critical_power_w)
-    return np.asarray(fit.critical_power_w + fit.w_prime_j / (duration + k))
 
 
 def _why_flagged(duration_s: float, used: bool, flagged: bool) -> str:

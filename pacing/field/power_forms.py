@@ -43,6 +43,27 @@ class FormFit:
         return self.parameters[1]
 
     @property
+    def asymptote_s(self) -> float:
+        """W′/(Pmax − CP), the time by which the curve is shifted; 0 with two parameters."""
+        if len(self.parameters) == 2:
+            return 0.0
+        return self.w_prime_j / (self.parameters[2] - self.critical_power_w)
+
+    def power_w(self, duration_s: Array) -> Array:
+        """The fitted curve."""
+        return np.asarray(self.critical_power_w + self.w_prime_j / (duration_s + self.asymptote_s))
+
+    def slopes(self, duration_s: Array) -> Array:
+        """d power / d parameter (n, 2 or 3)."""
+        if len(self.parameters) == 2:
+            return np.column_stack([np.ones_like(duration_s), 1.0 / duration_s])
+        k, above = self.asymptote_s, self.parameters[2] - self.critical_power_w
+        by_k = -self.w_prime_j / (duration_s + k) ** 2
+        return np.column_stack(
+            [1.0 + by_k * k / above, 1.0 / (duration_s + k) + by_k / above, -by_k * k / above]
+        )
+
+    @property
     def standard_errors(self) -> tuple[float, ...] | None:
         """Of each parameter, None where there is no scatter to judge by."""
         if self.covariance is None:

@@ -59,8 +59,7 @@ class PowerFit:
 
     def power_at_w(self, duration_s: ArrayLike) -> Array:
         """The fitted curve, in the tested position."""
-        duration = np.asarray(duration_s, dtype=float)
-        return np.asarray(self.critical_power_w + self.w_prime_j / (duration + self._asymptote_s))
+        return self.chosen.power_w(np.asarray(duration_s, dtype=float))
 
     def half_band_w(self, duration_s: ArrayLike, level: float = 0.95) -> Array | None:
         """Half the width of the curve's confidence band at each duration."""
@@ -69,7 +68,7 @@ class PowerFit:
         if self.chosen.covariance is None:
             return None
         duration = np.atleast_1d(np.asarray(duration_s, dtype=float))
-        slopes = self._slopes(duration)
+        slopes = self.chosen.slopes(duration)
         variance = np.einsum("ij,jk,ik->i", slopes, self.chosen.covariance, slopes)
         factor = float(student.ppf(0.5 + level / 2.0, self.chosen.degrees_of_freedom))
         return np.asarray(factor * np.sqrt(np.maximum(variance, 0.0)))
@@ -101,19 +100,3 @@ class PowerFit:
         root = vectors * np.sqrt(np.maximum(values, 0.0))
         centre = np.array([self.critical_power_w, self.w_prime_j])
         return np.asarray(centre + radius * (circle @ root.T) * scale)
-
-    @property
-    def _asymptote_s(self) -> float:
-        if self.peak_power_w is None:
-            return 0.0
-        return self.w_prime_j / (self.peak_power_w - self.critical_power_w)
-
-    def _slopes(self, duration_s: Array) -> Array:
-        """d power / d parameter (n, 2 or 3)."""
-        if self.peak_power_w is None:
-            return np.column_stack([np.ones_like(duration_s), 1.0 / duration_s])
-        k, above = self._asymptote_s, self.peak_power_w - self.critical_power_w
-        by_k = -self.w_prime_j / (duration_s + k) ** 2
-        return np.column_stack(
-            [1.0 + by_k * k / above, 1.0 / (duration_s + k) + by_k / above, -by_k * k / above]
-        )

@@ -24,21 +24,22 @@ MOST_APART_DAYS = 60
 OFF_CURVE = 3.0
 
 
-def off_curve(duration_s: Array, power_w: Array) -> NDArray[np.bool_]:
-    """The effort, if any, that lies off the curve through the others, (n,).
+def off_curve(fit: FormFit, duration_s: Array, power_w: Array) -> NDArray[np.bool_]:
+    """The effort, if any, that lies off the curve of the others, (n,).
 
-    Judged with four efforts or more: the largest miss, left out of its own fit, beyond three
-    times what a good effort repeats to.
+    Judged where two efforts more than the fit has numbers are there: the largest miss, scaled by
+    the effort's own pull on the curve, beyond three times what a good effort repeats to.
     """
     flagged = np.zeros(duration_s.size, dtype=bool)
-    if duration_s.size < 4:
+    if duration_s.size < len(fit.parameters) + 2:
         return flagged
-    design = np.column_stack([np.ones_like(duration_s), 1.0 / duration_s]) / power_w[:, None]
-    hat = np.einsum("ij,jk,ik->i", design, np.linalg.pinv(design.T @ design), design)
-    solution = np.linalg.lstsq(design, np.ones_like(power_w), rcond=None)[0]
-    left_out = (1.0 - design @ solution) / np.sqrt(np.maximum(1.0 - hat, 1e-9))
-    worst = int(np.argmax(np.abs(left_out)))
-    flagged[worst] = abs(left_out[worst]) > OFF_CURVE * REPEATABLE
+    fitted = fit.power_w(duration_s)
+    design = fit.slopes(duration_s) / fitted[:, None]
+    design = design / np.linalg.norm(design, axis=0)
+    pull = np.einsum("ij,jk,ik->i", design, np.linalg.pinv(design.T @ design), design)
+    misses = (power_w / fitted - 1.0) / np.sqrt(np.maximum(1.0 - pull, 1e-3))
+    worst = int(np.argmax(np.abs(misses)))
+    flagged[worst] = abs(misses[worst]) > OFF_CURVE * REPEATABLE
     return flagged
 
 

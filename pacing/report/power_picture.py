@@ -92,21 +92,21 @@ def _draw_left_over(axes: Axes, fit: PowerFit) -> None:
     times = _times(fit)
     half = fit.half_band_w(times)
     residuals = [_alike_w(fit, e) - float(fit.power_at_w(e.duration_s)) for e in fit.efforts]
-    reach = 1.3 * max(4.0, *(abs(r) for r in residuals))
+    reach = 1.7 * max(4.0, *(abs(r) for r in residuals))
     if half is not None:
         axes.fill_between(times / 60.0, -half, half, color=style.FILL, lw=0)
         inside = times >= min(effort.duration_s for effort in fit.efforts)
         reach = max(reach, min(1.1 * float(half[inside].max()), 3.0 * reach))
     axes.axhline(0.0, color=style.INK, lw=0.8)
-    for effort, residual in zip(fit.efforts, residuals, strict=True):
+    pairs = sorted(zip(fit.efforts, residuals, strict=True), key=lambda pair: pair[0].duration_s)
+    for row, (effort, residual) in enumerate(pairs):
         _dot(axes, effort, residual)
-        label = f"{effort.power_w:.0f} W" + (f", {effort.flagged}" if effort.flagged else "")
-        last = effort.duration_s > 0.85 * times[-1]
-        axes.annotate(
-            label,
-            (effort.duration_s / 60.0, residual),
-            (-6 if last else 6, 5 if residual >= 0.0 else -12),
-            textcoords="offset points",
+        last = effort.duration_s > 0.9 * times[-1]
+        axes.text(
+            effort.duration_s / 60.0,
+            0.90 - 0.15 * (row % 2),
+            f"{effort.power_w:.0f} W",
+            transform=axes.get_xaxis_transform(),
             fontsize=8,
             ha="right" if last else "left",
         )
@@ -116,6 +116,7 @@ def _draw_left_over(axes: Axes, fit: PowerFit) -> None:
     axes.set_title(title, loc="left", fontsize=9)
     axes.set_xlabel("minutes")
     style.quiet_axes(axes)
+    axes.grid(False)
 
 
 def _dot(axes: Axes, effort: Effort, y: float) -> None:

@@ -77,12 +77,11 @@ def test_three_parameters_band_agrees_with_a_change_of_each_parameter() -> None:
     power = three_parameter_power_w(WIDE, **THREE) * (1.0 + 0.01 * np.sin(WIDE))
     fit = fit_power(WIDE, power)
     slopes = []
-    for i, (name, value) in enumerate(zip(THREE, fit.chosen.parameters, strict=True)):
+    for name, value in zip(THREE, fit.chosen.parameters, strict=True):
         at = dict(zip(THREE, fit.chosen.parameters, strict=True))
         up, down = {**at, name: value * (1 + 1e-6)}, {**at, name: value * (1 - 1e-6)}
         rise = three_parameter_power_w(90.0, **up) - three_parameter_power_w(90.0, **down)
         slopes.append(rise / (2e-6 * value))
-        assert i < 3
     variance = np.array(slopes) @ fit.chosen.covariance @ np.array(slopes)
     # Student's t at 97.5 % with five degrees of freedom: 2.5706 (any table)
     assert fit.half_band_w(90.0)[0] == pytest.approx(2.5706 * np.sqrt(variance), rel=1e-4)
@@ -94,6 +93,19 @@ def test_an_effort_off_the_curve_is_flagged_and_no_other() -> None:
     fit = fit_power(SET, power)
     assert [effort.flagged for effort in fit.efforts] == ["", "", "off the curve", ""]
     assert any("lies off the curve of the others" in said for said in fit.warnings)
+
+
+def test_a_sprint_on_the_three_parameter_curve_is_not_off_it() -> None:
+    power = three_parameter_power_w(WIDE, **THREE)
+    power[5] *= 0.92
+    fit = fit_power(WIDE, power)
+    assert [i for i, effort in enumerate(fit.efforts) if effort.flagged] == [5]
+
+
+def test_beside_three_parameters_the_others_are_fitted_to_efforts_of_two_minutes_and_more() -> None:
+    fit = fit_power(WIDE, three_parameter_power_w(WIDE, **THREE))
+    alone = fit_power(WIDE[3:], three_parameter_power_w(WIDE[3:], **THREE), form="two-parameter")
+    assert fit.forms[0].parameters == pytest.approx(alone.chosen.parameters)
 
 
 def test_efforts_outside_two_to_thirty_minutes_are_left_out_and_said() -> None:
