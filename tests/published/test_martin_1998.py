@@ -1,6 +1,6 @@
 """Martin, Milliken, Cobb, McFadden & Coggan 1998, J Appl Biomech 14(3):276-291, appendix.
 
-The worked example, read in two independent transcriptions that agree.
+The worked example, read at second hand in two independent copies that agree.
 """
 
 from __future__ import annotations
