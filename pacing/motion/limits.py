@@ -42,7 +42,7 @@ def braking_m_s2(gradient: Array, *, dry: bool) -> Array:
     """Net deceleration planned with, per cell: less on a descent as the pitch-over limit falls."""
     level = BRAKING_G_DRY if dry else BRAKING_G_WET
     share = np.clip(pitch_over_g(gradient) / CENTRE_OF_MASS_RATIO, 0.1, 1.0)
-    return level * GRAVITY_M_S2 * share
+    return np.asarray(level * GRAVITY_M_S2 * share)
 
 
 def node_limits_m_s(course: Course, *, max_speed_m_s: float, dry: bool) -> Array:
@@ -58,9 +58,7 @@ def node_limits_m_s(course: Course, *, max_speed_m_s: float, dry: bool) -> Array
     return limit
 
 
-def _lower(
-    limit: Array, distance_m: Array, at_m: float, length_m: float, speed_m_s: float
-) -> None:
+def _lower(limit: Array, distance_m: Array, at_m: float, length_m: float, speed_m_s: float) -> None:
     first = int(np.searchsorted(distance_m, at_m - 0.5 * length_m - 1e-6))
     last = int(np.searchsorted(distance_m, at_m + 0.5 * length_m + 1e-6))
     if last <= first:  # shorter than a cell: the nearest node carries it

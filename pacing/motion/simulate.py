@@ -10,13 +10,13 @@ asked for, no power above spin-out, exactly the spin-out speed, or exactly the s
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 from enum import IntEnum
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg.lapack import dtbtrs
-from scipy.signal import lfilter
 
 from pacing.errors import OurFaultError
 from pacing.motion.road import Road
@@ -90,7 +90,7 @@ def solve_bidiagonal(diagonal: Array, below: Array, right: Array) -> Array:
     x, info = dtbtrs(band, right, uplo="L")
     if info != 0:
         raise OurFaultError("The linearised motion is singular.")
-    return x
+    return np.asarray(x)
 
 
 def _linearise(
@@ -199,29 +199,40 @@ def _newton(
         energy[1:] = np.maximum(trial, 0.1 * energy[1:])
         if last_mode is not None and np.array_equal(mode, last_mode):
             worst = float(np.max(np.abs(step) / (1.0 + energy[1:])))
-            if worst < 1e-9:
+            if worst < 1e-7:
                 return energy, slopes, mode
         last_mode = mode
     return None
 
 
 def _march(road: Road, target_w: Array, start_energy: float) -> Array:
-    """A first guess: quasi-steady speeds smoothed by the rider's inertia, within the limits."""
-    speed = np.minimum(road.limit_m_s, 10.0)
-    steady = 0.5 * (speed[1:] + speed[:-1])
-    for _ in range(25):
-        force, slope = road.resistance_n_and_slope(steady)
-        wanted = road.efficiency * target_w
-        error = force * steady - wanted
-        derivative = force + slope * steady
-        step = error / np.where(derivative > 5.0, derivative, 5.0)
-        steady = np.clip(steady - np.clip(step, -3.0, 3.0), 1.5, 30.0)
-    decay = float(np.exp(-np.mean(road.cell_m) / 150.0))
-    smoothed = lfilter([1.0 - decay], [1.0, -decay], steady, zi=[decay * steady[0]])[0]
-    energy = np.concatenate([[start_energy], 0.5 * smoothed**2])
-    limit = 0.5 * road.limit_m_s[1:] ** 2
-    energy[1:] = np.minimum(energy[1:], limit)
-    return energy
+    """A first guess, cell after cell by the implicit Euler rule, drag area at no yaw."""
+    area = np.array([drag_area.m2[0] for drag_area in road.drag_areas])[road.position]
+    columns = zip(
+        (road.cell_m / road.effective_mass_kg).tolist(),
+        (road.efficiency * target_w).tolist(),
+        road.steady_n.tolist(),
+        (road.half_density_kg_m3 * area).tolist(),
+        road.wind_along_m_s.tolist(),
+        (road.wind_across_m_s**2).tolist(),
+        road.limit_m_s[1:].tolist(),
+        strict=True,
+    )
+    energy = [start_energy]
+    speed = max(math.sqrt(2.0 * start_energy), FLOOR_M_S)
+    for per_mass, power, steady, air, wind, across2, limit in columns:
+        before = energy[-1]
+        for _ in range(4):
+            along = speed + wind
+            flow = math.sqrt(along * along + across2) + 1e-9
+            drive = min(power / speed, road.traction_n)
+            force = drive - steady - road.bearing_n_per_m_s * speed - air * flow * along
+            slope = drive / speed + road.bearing_n_per_m_s + air * (flow + along * along / flow)
+            error = 0.5 * speed * speed - before - per_mass * force
+            speed = max(speed - error / (speed + per_mass * slope), 0.5 * speed)
+        speed = max(min(speed, limit), FLOOR_M_S)
+        energy.append(0.5 * speed * speed)
+    return np.array(energy)
 
 
 def _ride(road: Road, target_w: Array, energy: Array, mode: NDArray[np.int8]) -> Motion:

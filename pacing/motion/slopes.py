@@ -112,7 +112,9 @@ def _chain(own_end: Array, entry_end: Array) -> Array:
     return matrix
 
 
-def time_adjoint(ends: CellEndSlopes, slopes: CellSlopes, *, per_energy: Array | None = None) -> Array:
+def time_adjoint(
+    ends: CellEndSlopes, slopes: CellSlopes, *, per_energy: Array | None = None
+) -> Array:
     """Multipliers (N,) of the motion equations for the total time.
 
     The slope of the time in anything that shifts the right-hand side of cell i's equation

@@ -28,12 +28,17 @@ class Runs(NamedTuple):
 
 
 class Lowest(NamedTuple):
-    """W′ at its lowest in each piece (n,), at each piece's end (n,), and their slopes (n, n)."""
+    """W′ at its lowest in each piece (n,), and at each piece's end (n,)."""
 
     lowest_j: Array
     end_j: Array
-    lowest_slopes: Array
-    end_slopes: Array
+
+
+class LowestSlopes(NamedTuple):
+    """Slopes of `Lowest` in all piece powers (n, n)."""
+
+    lowest: Array
+    end: Array
 
 
 def starting_pools(law: RecoveryLaw, w_prime_j: float, start_j: float | None) -> Pools:
@@ -69,14 +74,12 @@ def balance_at_nodes(
 
 def runs_of(motion: Motion, *, starts: NDArray[np.intp], excess_w: Array) -> Runs:
     """Merge cells of one piece that are ridden at the same excess power."""
-    cells = motion.time_s.size
-    new = np.ones(cells, dtype=bool)
-    steady = (motion.mode == Mode.POWER) | (motion.mode == Mode.COAST)
+    mode = motion.mode
+    idle = (motion.power_w == 0.0) & ((mode == Mode.COAST) | (mode == Mode.LIMIT))
+    driven = mode == Mode.POWER
+    new = np.ones(mode.size, dtype=bool)
     new[1:] = ~(
-        steady[1:]
-        & steady[:-1]
-        & (motion.mode[1:] == motion.mode[:-1])
-        & (excess_w[1:] == excess_w[:-1])
+        ((driven[1:] & driven[:-1]) | (idle[1:] & idle[:-1])) & (excess_w[1:] == excess_w[:-1])
     )
     new[starts] = True
     first = np.flatnonzero(new)
@@ -109,18 +112,34 @@ def run_slopes(runs: Runs, slopes: PieceSlopes, *, power_share: Array) -> RunSlo
 
 def lowest_in_pieces(
     law: RecoveryLaw,
-    motion: Motion,
-    slopes: PieceSlopes,
+    runs: Runs,
     *,
-    starts: NDArray[np.intp],
-    excess_w: Array,
-    power_share: Array,
+    pieces: int,
     w_prime_j: float,
     start_j: float | None = None,
 ) -> Lowest:
-    """Lowest and last W′ of every piece, with exact slopes in all piece powers."""
-    count = starts.size
-    runs = runs_of(motion, starts=starts, excess_w=excess_w)
+    """Lowest and last W′ of every piece."""
+    pools = starting_pools(law, w_prime_j, start_j)
+    left = []
+    for excess, duration in zip(runs.excess_w.tolist(), runs.duration_s.tolist(), strict=True):
+        pools = law.advance(pools, excess, duration, w_prime_j=w_prime_j)
+        left.append(sum(pools))
+    first = np.searchsorted(runs.piece, np.arange(pieces))
+    after = np.array(left)
+    return Lowest(np.minimum.reduceat(after, first), after[np.append(first[1:], after.size) - 1])
+
+
+def lowest_slopes(
+    law: RecoveryLaw,
+    runs: Runs,
+    slopes: PieceSlopes,
+    *,
+    power_share: Array,
+    w_prime_j: float,
+    start_j: float | None = None,
+) -> LowestSlopes:
+    """Exact slopes of the lowest and last W′ of every piece in all piece powers."""
+    count = slopes.entry_energy.shape[0]
     change = run_slopes(runs, slopes, power_share=power_share)
     by_time, by_power = change.duration.tolist(), change.excess.tolist()
     excess, duration = runs.excess_w.tolist(), runs.duration_s.tolist()
@@ -130,8 +149,7 @@ def lowest_in_pieces(
     pools = starting_pools(law, w_prime_j, start_j)
     size = len(pools)
     entry_jacobian = np.zeros((size, count))
-    lowest, ends = np.empty(count), np.empty(count)
-    lowest_slopes, end_slopes = np.empty((count, count)), np.empty((count, count))
+    by_lowest, by_end = np.empty((count, count)), np.empty((count, count))
     for k in range(count):
         low, low_local, local = 0.0, None, None
         for r in range(first_run[k], first_run[k + 1]):
@@ -141,16 +159,14 @@ def lowest_in_pieces(
             left = sum(pools)
             if low_local is None or left < low:
                 low, low_local = left, local
-        jacobian = _spread(local, slopes.entry_energy[k], entry_jacobian, k)
-        lowest[k], ends[k] = low, sum(pools)
-        end_slopes[k] = jacobian.sum(axis=0)
-        if low_local is local:
-            lowest_slopes[k] = end_slopes[k]
-        else:
-            at_low = _spread(low_local, slopes.entry_energy[k], entry_jacobian, k)
-            lowest_slopes[k] = at_low.sum(axis=0)
+        assert local is not None and low_local is not None
+        entry = slopes.entry_energy[k]
+        jacobian = _spread(local, entry, entry_jacobian, k)
+        by_end[k] = by_lowest[k] = jacobian.sum(axis=0)
+        if low_local is not local:
+            by_lowest[k] = _spread(low_local, entry, entry_jacobian, k).sum(axis=0)
         entry_jacobian = jacobian
-    return Lowest(lowest, ends, lowest_slopes, end_slopes)
+    return LowestSlopes(by_lowest, by_end)
 
 
 Local = list[list[float]]
@@ -162,9 +178,7 @@ def _through(step: Advance, local: Local | None, power: list[float], time: list[
     own, entry = power[0], power[1]
     by_own, by_entry = time[0], time[1]
     rows = []
-    for d_pools, excess, duration in zip(
-        step.d_pools, step.d_excess, step.d_duration, strict=True
-    ):
+    for d_pools, excess, duration in zip(step.d_pools, step.d_excess, step.d_duration, strict=True):
         row = [excess * own + duration * by_own, excess * entry + duration * by_entry]
         if local is None:
             row += d_pools
@@ -207,8 +221,8 @@ def prices(
     law: RecoveryLaw,
     motion: Motion,
     *,
-    starts: NDArray[np.intp],
-    excess_w: Array,
+    runs: Runs,
+    pieces: int,
     power_share: Array,
     w_prime_j: float,
     multipliers: Array,
@@ -219,7 +233,6 @@ def prices(
 
     ``multipliers`` (n,) weigh each piece's lowest W′, or (1,) the last with ``at_lowest`` False.
     """
-    runs = runs_of(motion, starts=starts, excess_w=excess_w)
     pools = starting_pools(law, w_prime_j, start_j)
     steps = []
     for excess, duration in zip(runs.excess_w.tolist(), runs.duration_s.tolist(), strict=True):
@@ -228,7 +241,7 @@ def prices(
     left = np.array([sum(step.pools) for step in steps])
     weight = np.zeros(left.size)
     if at_lowest:
-        first_run = np.searchsorted(runs.piece, np.arange(starts.size))
+        first_run = np.searchsorted(runs.piece, np.arange(pieces))
         for k, (a, b) in enumerate(
             zip(first_run, np.append(first_run[1:], left.size), strict=True)
         ):

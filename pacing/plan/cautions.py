@@ -1,4 +1,4 @@
-"""What a plan warns of: fast descents, guesses at the edge of a table, gains too good to be true."""
+"""What a plan warns of: fast descents, values beyond a table, gains too good to be true."""
 
 from __future__ import annotations
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from time import perf_counter
 from typing import Any
@@ -14,13 +14,14 @@ from numpy.typing import NDArray
 
 from pacing.course.pieces import cut_pieces
 from pacing.plan.cautions import plan_cautions
-from pacing.plan.cues import placed, rounded
+from pacing.plan.cues import placed
 from pacing.plan.frames import cue_frame, model_inputs, piece_frame, split_frame, trace_frame
 from pacing.plan.places import places_of, readable_nodes
 from pacing.plan.prepare import Prepared, prepare, settled
 from pacing.plan.problem import Cuts, Ride, ride
-from pacing.plan.refine import Refinement, reduced_slope, refined
+from pacing.plan.refine import Refinement, merged_to, reduced_slope, refined
 from pacing.plan.replay import refuse_reserve_broken, refuse_stall, replayed
+from pacing.plan.rounding import long_pieces, rounded, split_for_steps
 from pacing.plan.solve import Solution, solve
 from pacing.race import Race
 
@@ -157,20 +158,43 @@ def _terrain_cuts(prepared: Prepared, shortest_s: float) -> Cuts:
 
 
 def _cues(prepared: Prepared, solution: Solution) -> Ride:
-    """Cues as printed: boundaries where they can be seen, powers in whole steps."""
+    """Cues as printed: boundaries where they can be seen, powers in whole steps.
+
+    Where pieces are so long that a step of power is much of W′, some cues may be better spent
+    on changing between two steps; both ways are tried.
+    """
+    race = prepared.race
+    step_w = race.plan.power_step_w * race.rider.power_meter_factor
+    ways = [_printed(prepared, solution, step_w)]
+    long = int(np.sum(long_pieces(solution.ride, step_w=step_w)))
+    most = race.plan.max_cues - min(long, race.plan.max_cues // 2)
+    if long and solution.ride.starts.size > most:
+        ways.append(_printed(prepared, merged_to(solution, most), step_w))
+    return min(ways, key=lambda way: way.motion.total_s)
+
+
+def _printed(prepared: Prepared, solution: Solution, step_w: float) -> Ride:
+    """Place the boundaries, solve again, round together."""
     race = prepared.race
     readable = readable_nodes(race.course, places_of(race.course))
     starts = placed(
         solution, reduced_slope(solution), readable, shortest_s=race.plan.shortest_cue_s
     )
-    again = solve(
-        prepared.problem,
-        starts,
-        solution.ride.power_w,
-        guess_m_s=solution.ride.motion.speed_m_s,
+    ridden = solution.ride
+    again = solve(prepared.problem, starts, ridden.power_w, guess_m_s=ridden.motion.speed_m_s)
+    cut = split_for_steps(again.ride, readable, step_w=step_w)
+    if starts.size < cut.size <= race.plan.max_cues:
+        again = _cut_at(again, cut)
+    return _merged(rounded(again, step_w=step_w))
+
+
+def _cut_at(solution: Solution, starts: Cuts) -> Solution:
+    """The same ride with more pieces."""
+    ridden = solution.ride
+    power = ridden.target_w[starts]
+    return replace(
+        solution, ride=ride(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
     )
-    step = race.plan.power_step_w * race.rider.power_meter_factor
-    return _merged(rounded(again, step_w=step))
 
 
 def _merged(ridden: Ride) -> Ride:

@@ -103,4 +103,3 @@ def problem_for(race: Race, road: Road, critical_power_w: float) -> Problem:
         first_30_s_max_w=FIRST_30_S_SHARE * rider.critical_power_w if first is None else first,
         peak_power_w=rider.peak_power_w if falls else None,
     )
-

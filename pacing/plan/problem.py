@@ -11,7 +11,16 @@ from numpy.typing import NDArray
 from pacing.motion.road import Road
 from pacing.motion.simulate import CellSlopes, Motion, simulate_motion_and_slopes
 from pacing.motion.slopes import PieceSlopes, piece_slopes
-from pacing.plan.balance import Lowest, balance_at_nodes, excess_w, lowest_in_pieces
+from pacing.plan.balance import (
+    Lowest,
+    LowestSlopes,
+    Runs,
+    balance_at_nodes,
+    excess_w,
+    lowest_in_pieces,
+    lowest_slopes,
+    runs_of,
+)
 from pacing.rider.budget import RecoveryLaw
 
 Array = NDArray[np.float64]
@@ -95,14 +104,28 @@ class Ride:
         )
 
     @cached_property
+    def runs(self) -> Runs:
+        """Stretches of constant excess power."""
+        return runs_of(self.motion, starts=self.starts, excess_w=self.excess_w)
+
+    @cached_property
     def lowest(self) -> Lowest:
-        """Lowest and last W′ in each piece, with slopes."""
+        """Lowest and last W′ in each piece."""
         return lowest_in_pieces(
             self.problem.law,
-            self.motion,
+            self.runs,
+            pieces=self.starts.size,
+            w_prime_j=self.problem.w_prime_j,
+            start_j=self.problem.w_start_j,
+        )
+
+    @cached_property
+    def lowest_slopes(self) -> LowestSlopes:
+        """Slopes of `lowest` in the piece powers."""
+        return lowest_slopes(
+            self.problem.law,
+            self.runs,
             self.slopes,
-            starts=self.starts,
-            excess_w=self.excess_w,
             power_share=self.problem.power_share,
             w_prime_j=self.problem.w_prime_j,
             start_j=self.problem.w_start_j,
@@ -125,9 +148,7 @@ def targets(starts: Cuts, power_w: Array, cells: int) -> Array:
     return np.repeat(power_w, np.diff(np.append(starts, cells)))
 
 
-def ride(
-    problem: Problem, starts: Cuts, power_w: Array, *, guess_m_s: Array | None = None
-) -> Ride:
+def ride(problem: Problem, starts: Cuts, power_w: Array, *, guess_m_s: Array | None = None) -> Ride:
     """Ride piece powers ``power_w`` (n,) with pieces beginning at cells ``starts`` (n,)."""
     target = targets(starts, power_w, problem.cells)
     motion, slopes = simulate_motion_and_slopes(

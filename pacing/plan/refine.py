@@ -26,8 +26,8 @@ def reduced_slope(solution: Solution) -> Array:
     price = prices(
         problem.law,
         motion,
-        starts=ridden.starts,
-        excess_w=ridden.excess_w,
+        runs=ridden.runs,
+        pieces=ridden.starts.size,
         power_share=problem.power_share,
         w_prime_j=problem.w_prime_j,
         multipliers=solution.multipliers_s_per_j,
@@ -79,9 +79,7 @@ def refined(
                 break
             reach, exchanges = 0.5 * reach, 0
             continue
-        trial = solve(
-            best.ride.problem, starts, power, guess_m_s=best.ride.motion.speed_m_s
-        )
+        trial = solve(best.ride.problem, starts, power, guess_m_s=best.ride.motion.speed_m_s)
         solves, iterations = solves + 1, iterations + trial.iterations
         gain = best.ride.motion.total_s - trial.ride.motion.total_s
         if gain > 0.0:
@@ -115,7 +113,8 @@ def _exchanged(
             if done >= exchanges:
                 break
             free = [
-                j for j in by_cost.tolist()
+                j
+                for j in by_cost.tolist()
                 if j not in touched and j + 1 not in touched and k not in (j, j + 1)
             ]
             if not free or gain < 1.3 * merges[free[0]]:
@@ -127,6 +126,18 @@ def _exchanged(
         touched.add(k)
     new = np.array(sorted((set(starts.tolist()) - set(dropped)) | set(added)), dtype=np.intp)
     return new, _averaged(ridden, new)
+
+
+def merged_to(solution: Solution, most_pieces: int) -> Solution:
+    """Merge the neighbours that cost least to merge until ``most_pieces`` are left; solve again."""
+    ridden = solution.ride
+    starts, power = ridden.starts, ridden.power_w
+    bend = curvature(ridden)
+    while starts.size > max(1, most_pieces):
+        drop = int(np.argmin(_merge_costs(starts, power, bend))) + 1
+        starts = np.delete(starts, drop)
+        power = _averaged(ridden, starts)
+    return solve(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
 
 
 def _averaged(ridden: Ride, starts: Cuts) -> Array:

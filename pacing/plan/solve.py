@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +18,7 @@ MOST_ITERATIONS = 300
 MOST_BOUND_CHANGES = 8
 TIME_TOLERANCE_S = 1e-5
 JOULES_PER_UNIT = 1000.0
+EVENNESS = 0.05
 
 
 @dataclass(frozen=True)
@@ -51,9 +53,7 @@ class _Memory:
     def at(self, x: Array) -> Ride:
         if self.x.size != x.size or not np.array_equal(self.x, x):
             power = self.base_w + self.step_w * x
-            self.last = ride(
-                self.problem, self.starts, power, guess_m_s=self.last.motion.speed_m_s
-            )
+            self.last = ride(self.problem, self.starts, power, guess_m_s=self.last.motion.speed_m_s)
             self.x = x.copy()
             self.evaluations += 1
         return self.last
@@ -103,19 +103,26 @@ def margins_j(ridden: Ride) -> Array:
 
 def _margin_slopes(ridden: Ride) -> Array:
     if ridden.problem.reserve_everywhere:
-        return ridden.lowest.lowest_slopes
-    return ridden.lowest.end_slopes[-1:]
+        return ridden.lowest_slopes.lowest
+    return ridden.lowest_slopes.end[-1:]
 
 
-def _peak_margins_w(ridden: Ride) -> tuple[Array, Array]:
-    """Room below CP + (Pmax − CP) W/W′ at each piece's lowest W′, and its slopes."""
+def _peak_margins_w(ridden: Ride) -> Array:
+    """Room below CP + (Pmax − CP) W/W′ at each piece's lowest W′ (n,)."""
+    share, cp, per_joule = _peak_terms(ridden)
+    return cp + per_joule * ridden.lowest.lowest_j - ridden.power_w / share
+
+
+def _peak_margin_slopes(ridden: Ride) -> Array:
+    share, _, per_joule = _peak_terms(ridden)
+    return per_joule[:, None] * ridden.lowest_slopes.lowest - np.diag(1.0 / share)
+
+
+def _peak_terms(ridden: Ride) -> tuple[Array, Array, Array]:
     problem, starts = ridden.problem, ridden.starts
     assert problem.peak_power_w is not None
     share, cp = problem.power_share[starts], problem.critical_power_w[starts]
-    per_joule = (problem.peak_power_w - cp) / problem.w_prime_j
-    room = cp + per_joule * ridden.lowest.lowest_j - ridden.power_w / share
-    slopes = per_joule[:, None] * ridden.lowest.lowest_slopes - np.diag(1.0 / share)
-    return room, slopes
+    return share, cp, (problem.peak_power_w - cp) / problem.w_prime_j
 
 
 def solve(
@@ -124,31 +131,75 @@ def solve(
     power_w: Array,
     *,
     guess_m_s: Array | None = None,
+    fixed: NDArray[np.bool_] | None = None,
+    evenness: float = EVENNESS,
     tolerance_s: float = TIME_TOLERANCE_S,
 ) -> Solution:
-    """Find the piece powers (n,) of least time from the starting powers ``power_w`` (n,)."""
+    """Find the piece powers (n,) of least time from the starting powers ``power_w`` (n,).
+
+    Powers marked ``fixed`` (n,) stay as they are. ``evenness`` weighs the near-ties towards
+    even power (0: time alone), see `_Evenness`.
+    """
     first = ride(problem, starts, power_w, guess_m_s=guess_m_s)
-    low, high = power_bounds_w(problem, first)
+    fixed = np.zeros(starts.size, dtype=bool) if fixed is None else fixed
+
+    def bounds(ridden: Ride) -> tuple[Array, Array]:
+        low, high = power_bounds_w(problem, ridden)
+        return np.where(fixed, power_w, low), np.where(fixed, power_w, high)
+
+    low, high = bounds(first)
     iterations = evaluations = 0
     for _ in range(MOST_BOUND_CHANGES):
-        solution = _solve_within(first, low, high, tolerance_s)
+        solution = _solve_within(first, low, high, tolerance_s, evenness)
         iterations += solution.iterations
         evaluations += solution.evaluations
         first = solution.ride
-        low, high = power_bounds_w(problem, first)
+        low, high = bounds(first)
         outside = (first.power_w < low - 1e-6) | (first.power_w > high + 1e-6)
         if not np.any(outside):
             break
     return replace(solution, iterations=iterations, evaluations=evaluations)
 
 
-def _solve_within(first: Ride, low: Array, high: Array, tolerance_s: float) -> Solution:
+class _Evenness:
+    """What breaks ties between powers that cost the same: seconds for being uneven.
+
+    A small share of the quasi-steady curvature about the mean power, and seconds for a target
+    above what can be put out where a speed limit holds. Where time has a say it wins.
+    """
+
+    def __init__(self, first: Ride, weight: float) -> None:
+        time = first.piece_time_s
+        self.mean_w = float(np.sum(first.power_w * time) / np.sum(time))
+        self.per_w2 = weight * time / (6.0 * self.mean_w**2)
+        self.per_joule = 0.2 * weight / self.mean_w
+
+    def seconds(self, ridden: Ride) -> float:
+        """The term itself."""
+        unused_j = np.sum((ridden.target_w - ridden.motion.power_w) * ridden.motion.time_s)
+        return float(self.per_w2 @ (ridden.power_w - self.mean_w) ** 2 + self.per_joule * unused_j)
+
+    def slopes(self, ridden: Ride) -> Array:
+        """Its slopes in the piece powers (n,)."""
+        unused = ridden.target_w - ridden.motion.power_w
+        time, slopes = ridden.motion.time_s, ridden.slopes
+        own = (1.0 - slopes.power_own) * time + unused * slopes.time_own
+        entry = unused * slopes.time_entry - slopes.power_entry * time
+        by_unused = np.add.reduceat(own, ridden.starts)
+        by_unused += np.add.reduceat(entry, ridden.starts) @ slopes.entry_energy
+        return 2.0 * self.per_w2 * (ridden.power_w - self.mean_w) + self.per_joule * by_unused
+
+
+def _solve_within(
+    first: Ride, low: Array, high: Array, tolerance_s: float, evenness: float
+) -> Solution:
     """One run of SLSQP between fixed bounds."""
     problem, starts = first.problem, first.starts
+    even = _Evenness(first, evenness)
     base = np.clip(first.power_w, low, high)
     step = standard_step_w(first)
     memory = _Memory(problem, starts, base, step, first)
-    constraints = [
+    constraints: list[dict[str, Any]] = [
         {
             "type": "ineq",
             "fun": lambda x: margins_j(memory.at(x)) / JOULES_PER_UNIT,
@@ -159,22 +210,27 @@ def _solve_within(first: Ride, low: Array, high: Array, tolerance_s: float) -> S
         constraints.append(
             {
                 "type": "ineq",
-                "fun": lambda x: _peak_margins_w(memory.at(x))[0] / step,
-                "jac": lambda x: _peak_margins_w(memory.at(x))[1] * step / step[:, None],
+                "fun": lambda x: _peak_margins_w(memory.at(x)) / step,
+                "jac": lambda x: _peak_margin_slopes(memory.at(x)) * step / step[:, None],
             }
         )
-    result = minimize(
-        lambda x: (memory.at(x).motion.total_s, memory.at(x).time_slopes * step),
+
+    def slopes(x: Array) -> Array:
+        ridden = memory.at(x)
+        return (ridden.time_slopes + even.slopes(ridden)) * step
+
+    result: Any = minimize(  # type: ignore[call-overload]
+        lambda x: memory.at(x).motion.total_s + even.seconds(memory.at(x)),
         np.zeros(starts.size),
-        jac=True,
+        jac=slopes,
         method="SLSQP",
         bounds=list(zip((low - base) / step, (high - base) / step, strict=True)),
         constraints=constraints,
         options={"maxiter": MOST_ITERATIONS, "ftol": tolerance_s},
     )
     best = memory.at(np.asarray(result.x))
-    multipliers = np.asarray(result.multipliers)
     jacobian = np.concatenate([constraint["jac"](result.x) for constraint in constraints])
+    multipliers = np.asarray(result.get("multipliers", np.zeros(len(jacobian))))
     return Solution(
         ride=best,
         status=int(result.status),
@@ -183,7 +239,7 @@ def _solve_within(first: Ride, low: Array, high: Array, tolerance_s: float) -> S
         evaluations=memory.evaluations,
         multipliers_s_per_j=multipliers[: margins_j(best).size] / JOULES_PER_UNIT,
         kkt_residual=_kkt_residual(
-            best.time_slopes * step - multipliers @ jacobian,
+            slopes(result.x) - multipliers @ jacobian,
             at_low=best.power_w <= low + 1e-6 * step,
             at_high=best.power_w >= high - 1e-6 * step,
         ),
