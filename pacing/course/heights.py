@@ -6,20 +6,43 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.linalg import cho_solve_banded, cholesky_banded
-from scipy.optimize import minimize_scalar
 
 from pacing.course.course import Repair
+from pacing.course.height_artefacts import (
+    STEEP,
+    STEEP_RECORDED,
+    cut_humps,
+    hump_repairs,
+    without_cliffs,
+    without_spikes,
+)
+from pacing.course.height_error import fixed_smoothing, halved_m, stated_error_pct
+from pacing.course.height_model import HeightModel, fit_model, road_heights, sums_of
+from pacing.course.height_source import (
+    AT_CHANGES,
+    SOURCES_OF_HEIGHT,
+    STEPPED,
+    TERRAIN_GRID,
+    Judged,
+    as_told,
+    judge_source,
+)
+from pacing.course.height_steps import Points, at_changes, binned, step_of, without_held
+from pacing.errors import UnusableInputError
 
 Array = NDArray[np.float64]
+
+WRAP_M = 1500.0
+DRAWS = 6
 
 
 @dataclass(frozen=True)
 class HeightProfile:
     """Smoothed heights ``elevation_m`` (N+1,) at the nodes ``distance_m`` (N+1,).
 
-    ``noise_m`` is the standard deviation of what was taken off, ``gradient_error_pct`` the expected
-    error of the gradient over 100 m, ``smoothing_m`` the length of hump that is halved.
+    ``noise_m`` is the standard deviation of the error of a height, ``gradient_error_pct`` the
+    expected error of the gradient over 100 m (root mean square), ``smoothing_m`` the length of
+    hump that is halved, ``reason`` why the source was judged so, ``sensor`` the kind of recorder.
     """
 
     distance_m: Array
@@ -29,6 +52,8 @@ class HeightProfile:
     gradient_error_pct: float
     smoothing_m: float
     repairs: tuple[Repair, ...] = ()
+    sensor: str = ""
+    reason: str = ""
 
 
 def smooth_heights(
@@ -45,77 +70,119 @@ def smooth_heights(
 
     ``distance_m`` (M,) is horizontal distance of the points, never falling; ``elevation_m`` (M,)
     their heights, nan where missing; ``grid`` (N+1,) uniform nodes from the first to the last
-    point. ``source`` is None (judged from the file) or one of ``recorded``, ``terrain grid``,
-    ``stepped``; ``timed`` tells that the points carry time stamps; ``closed`` joins the finish to
-    the start. Missing heights are bridged; the rise from start to finish is kept.
+    point. ``source`` is None (judged from the heights) or one of ``recorded``, ``terrain grid``,
+    ``stepped``; ``timed`` tells that the points carry time stamps; ``closed`` that the finish is
+    the start, so that heights and gradients join there. ``smoothing_m`` overrides the strength:
+    a hump of that length is halved. Missing heights are bridged; the rise from start to finish is
+    kept, heights cut or shifted by a repair apart. Raises UnusableInputError: unknown source, no
+    heights.
     """
+    if source is not None and source not in SOURCES_OF_HEIGHT:
+        raise UnusableInputError(
+            f"{source!r}", key="course.heights", expected=", ".join(SOURCES_OF_HEIGHT)
+        )
     known = np.isfinite(elevation_m)
+    if not known.any():
+        raise UnusableInputError("no heights at all", key="course.heights")
     at, height = distance_m[known], elevation_m[known]
-    normal, moment = _normal_equations(at, height, grid)
-    penalty = _second_difference_penalty(len(grid))
-    step = float(grid[1] - grid[0])
-    if smoothing_m is None:
-        weight = _likeliest_weight(normal, moment, penalty, height)
-    else:
-        weight = (smoothing_m / np.pi / step) ** 4 * len(height) / len(grid)
-    factor = cholesky_banded(normal + weight * penalty, lower=True)
-    smooth = cho_solve_banded((factor, True), moment)
-    residual = height - np.interp(at, grid, smooth)
-    noise = float(np.sqrt(np.mean(residual**2)))
-    ends = np.interp(grid[[0, -1]], at, height)
-    drift = ends - smooth[[0, -1]]
-    smooth = smooth + drift[0] + (drift[1] - drift[0]) * (grid - grid[0]) / (grid[-1] - grid[0])
-    length = np.pi * step * (weight * len(grid) / len(height)) ** 0.25
+    net = 0.0 if closed else float(height[-1] - height[0])
+    first = float(height[0] + height[-1]) / 2 if closed else float(height[0])
+    step = step_of(height)
+    points, spikes = without_spikes(binned(at, height), step)
+    nodes, points = _wrapped(points, grid) if closed else (grid, points)
+    smooth = _smooth(points, nodes, step=step, told=source, smoothing_m=smoothing_m, timed=timed)
+    inside = slice(None) if len(nodes) == len(grid) else slice((len(nodes) - len(grid)) // 2, None)
+    road = smooth.road[inside][: len(grid)]
+    share = (grid - grid[0]) / (grid[-1] - grid[0])
+    road = road + (first - road[0]) + (net - (road[-1] - road[0])) * share
     return HeightProfile(
         distance_m=grid,
-        elevation_m=smooth,
-        source=source or "recorded",
-        noise_m=noise,
-        gradient_error_pct=100 * noise / max(length, step),
-        smoothing_m=float(length),
+        elevation_m=road,
+        source=smooth.judged.source,
+        noise_m=smooth.noise_m,
+        gradient_error_pct=smooth.gradient_error_pct,
+        smoothing_m=smooth.smoothing_m,
+        repairs=(*spikes, *_within(smooth.repairs, grid)),
+        sensor=smooth.judged.sensor,
+        reason=smooth.judged.reason,
     )
 
 
-def _normal_equations(at: Array, height: Array, grid: Array) -> tuple[Array, Array]:
-    """Bands (3, N+1) and right side of the fit of a chain of straight cells to the points."""
-    step = (grid[-1] - grid[0]) / (len(grid) - 1)
-    place = np.clip((at - grid[0]) / step, 0.0, len(grid) - 1)
-    cell = np.minimum(place.astype(int), len(grid) - 2)
-    share = place - cell
-    count = len(grid)
-    bands = np.zeros((3, count))
-    bands[0] = np.bincount(cell, (1 - share) ** 2, count) + np.bincount(cell + 1, share**2, count)
-    bands[1] = np.bincount(cell, share * (1 - share), count)
-    moment = np.bincount(cell, (1 - share) * height, count)
-    moment += np.bincount(cell + 1, share * height, count)
-    return bands, np.asarray(moment, dtype=np.float64)
+@dataclass(frozen=True)
+class _Smooth:
+    road: Array
+    judged: Judged
+    noise_m: float
+    gradient_error_pct: float
+    smoothing_m: float
+    repairs: tuple[Repair, ...]
 
 
-def _second_difference_penalty(count: int) -> Array:
-    """Lower bands (3, N) of the sum of squared second differences, with a trace of a ridge."""
-    bands = np.zeros((3, count))
-    if count > 2:
-        bands[0, :-2] += 1.0
-        bands[0, 1:-1] += 4.0
-        bands[0, 2:] += 1.0
-        bands[1, :-2] -= 2.0
-        bands[1, 1:-1] -= 2.0
-        bands[2, :-2] += 1.0
-    bands[0] += 1e-12
-    return bands
+def _smooth(
+    points: Points,
+    nodes: Array,
+    *,
+    step: float | None,
+    told: str | None,
+    smoothing_m: float | None,
+    timed: bool,
+) -> _Smooth:
+    """Cut, judge, weigh and smooth."""
+    read = without_held(points)
+    held = len(read.at_m) < len(points.at_m)
+    points = read
+    keep, cuts = cut_humps(points, nodes, STEEP)
+    kept = points.chosen(keep)
+    if told is None:
+        judged = judge_source(kept, nodes, step_m=step, held=held, timed=timed)
+    else:
+        judged = as_told(kept, nodes, told)
+    cliffs: list[Repair] = []
+    if judged.source != TERRAIN_GRID:
+        points, cliffs = without_cliffs(points, step)
+        keep, cuts = cut_humps(points, nodes, STEEP_RECORDED)
+        if judged.source == STEPPED:
+            keep, cuts = np.ones_like(keep), []
+        kept = points.chosen(keep)
+        if cliffs:
+            judged = judged._replace(model=as_told(kept, nodes, judged.source).model)
+    model = judged.model
+    if judged.source == STEPPED:
+        kept, model = _between_steps(kept, nodes, step or 1.0)
+    sums = sums_of(*kept, nodes)
+    road, departures = road_heights(sums, model, DRAWS)
+    spacing = float(nodes[-1] - nodes[0]) / max(len(kept.at_m), 1)
+    if smoothing_m is not None:
+        road = fixed_smoothing(sums, smoothing_m)
+    return _Smooth(
+        road=road,
+        judged=judged,
+        noise_m=float(np.hypot(model.error_m, model.white_m)),
+        gradient_error_pct=stated_error_pct(road, departures, model, judged, sums.step_m),
+        smoothing_m=smoothing_m or halved_m(model, spacing, sums.step_m),
+        repairs=(*cliffs, *hump_repairs(cuts)),
+    )
 
 
-def _likeliest_weight(normal: Array, moment: Array, penalty: Array, height: Array) -> float:
-    """Weight of the penalty with the highest marginal likelihood of the heights."""
-    total = float(height @ height)
-    freedom = max(len(height) - 2, 1)
-    order = max(normal.shape[1] - 2, 1)
+def _between_steps(points: Points, nodes: Array, step_m: float) -> tuple[Points, HeightModel]:
+    points = at_changes(points, step_m)
+    prior = AT_CHANGES._replace(median=AT_CHANGES.median._replace(white_m=step_m))
+    return points, fit_model(*points, nodes, prior)[0]
 
-    def cost(log_weight: float) -> float:
-        factor = cholesky_banded(normal + np.exp(log_weight) * penalty, lower=True)
-        fit = cho_solve_banded((factor, True), moment)
-        misfit = max(total - float(moment @ fit), 1e-9)
-        return float(freedom * np.log(misfit) + 2 * np.sum(np.log(factor[0])) - order * log_weight)
 
-    found = minimize_scalar(cost, bounds=(-2.0, 16.0), method="bounded", options={"xatol": 0.05})
-    return float(np.exp(found.x))
+def _wrapped(points: Points, grid: Array) -> tuple[Array, Points]:
+    """A closed course with some of its end before its start and some of its start after its end."""
+    length = float(grid[-1] - grid[0])
+    cell = length / (len(grid) - 1)
+    count = min(int(WRAP_M / cell), len(grid) - 2)
+    nodes = np.concatenate([grid[-1 - count : -1] - length, grid, grid[1 : 1 + count] + length])
+    drift = points.height_m[-1] - points.height_m[0]
+    level = points.height_m - drift * (points.at_m - grid[0]) / length
+    at = np.concatenate([points.at_m - length, points.at_m, points.at_m + length])
+    inside = (at >= nodes[0]) & (at <= nodes[-1])
+    return nodes, Points(at[inside], np.tile(level, 3)[inside], np.tile(points.weight, 3)[inside])
+
+
+def _within(repairs: tuple[Repair, ...], grid: Array) -> tuple[Repair, ...]:
+    low, high = float(grid[0]) / 1000, float(grid[-1]) / 1000
+    return tuple(repair for repair in repairs if low <= repair.from_km and repair.to_km <= high)
