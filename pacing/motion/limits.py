@@ -77,7 +77,7 @@ def with_braking(limit_m_s: Array, *, cell_m: Array, braking_m_s2: Array) -> Arr
     ahead = np.concatenate([[0.0], np.cumsum(gain[:-1])])
     shifted = limit_m_s**2 + ahead
     lowest = np.minimum.accumulate(shifted[::-1])[::-1]
-    return np.sqrt(np.maximum(lowest - ahead, 0.0))
+    return np.asarray(np.sqrt(np.maximum(lowest - ahead, 0.0)))
 
 
 def speed_limits_m_s(course: Course, *, max_speed_m_s: float | None, dry: bool) -> Array:

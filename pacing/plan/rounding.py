@@ -67,7 +67,7 @@ def split_for_steps(ridden: Ride, readable: Cuts, *, step_w: float) -> Cuts:
     added = []
     for k in np.flatnonzero(long_pieces(ridden, step_w=step_w)):
         above = ridden.power_w[k] / step_w % 1.0
-        left = (ridden.balance_j[starts[k]] - problem.reserve_j) / problem.w_prime_j
+        left = (ridden.balance_j[starts[k]] - problem.reserve_j) / max(problem.w_prime_j, 1.0)
         share = above if left > 0.5 else 1.0 - above
         inside = readable[(readable > starts[k]) & (readable < ends[k])]
         if not 0.1 < share < 0.9 or inside.size == 0:

@@ -269,7 +269,8 @@ def best_constant(problem: Problem) -> Ride:
         memory["last"] = ride(problem, start, np.array([power]), guess_m_s=guess)
         return float(np.min(margins_j(memory["last"])))
 
-    low = max(problem.min_power_w, 1.0)
+    never_spends = float(np.min(problem.critical_power_w * problem.power_share))
+    low = max(problem.min_power_w, min(never_spends, problem.max_power_w))
     if margin(problem.max_power_w) >= 0.0:
         return memory["last"]
     if margin(low) < 0.0:
