@@ -55,6 +55,4 @@ def own_files() -> tuple[Path, ...]:
     lines = (ROOT / ".gitignore").read_text(encoding="utf-8").split()
     patterns = [line.strip("/").rsplit("/", 1)[-1] for line in lines]
     found = (file.relative_to(ROOT) for file in ROOT.rglob("*") if file.is_file())
-    return tuple(
-        sorted(file for file in found if not _ignored(file, [".git", *patterns]))
-    )
+    return tuple(sorted(file for file in found if not _ignored(file, [".git", *patterns])))
