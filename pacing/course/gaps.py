@@ -14,6 +14,7 @@ from pacing.errors import UnusableInputError
 Array = NDArray[np.float64]
 
 BRIDGED = "gap bridged by a straight line"
+SEGMENTS = "segments joined"
 NEIGHBOURS = 51
 GAP_M = 400.0
 GAP_RATIO = 8.0
@@ -44,7 +45,7 @@ def joined_segments(track: Track) -> list[Repair]:
     km = track.read_km()
     return [
         Repair(
-            "segments joined",
+            SEGMENTS,
             float(km[joints[0]]),
             float(km[joints[-1] + 1]),
             f"{joints.size + 1} segments, up to {_length(widest)} apart",

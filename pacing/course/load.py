@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from pacing.course.course import Course, CourseReport, CourseSpec
 from pacing.course.lap import Grid, Lap, closed_up, on_grid, part_of, rescaled, turned_round
 from pacing.course.read import read_track
-from pacing.course.repair import repair
+from pacing.course.repair import STOOD, repair
 from pacing.course.roadside import bends_kept, landmarks, slow_points, stretch_factors
 from pacing.course.verdict import Surveyed, judged
 from pacing.course.whole import CELL_M, whole_road
@@ -43,8 +43,7 @@ def load_course(spec: CourseSpec, *, cell_m: float = CELL_M) -> Course:
 
 def survey_course(spec: CourseSpec, *, cell_m: float = CELL_M) -> Survey:
     """As ``load_course``, but a course that could be read is returned whatever its verdict."""
-    as_read = read_track(spec.file, spec.track)
-    track, repairs = repair(as_read)
+    track, repairs = repair(read_track(spec.file, spec.track))
     whole = whole_road(track, repairs, spec)
     lap = _as_ridden(whole.lap, spec)
     ridden = whole.ridden(*_bounds_m(whole.lap.length_m, spec))
@@ -60,8 +59,9 @@ def survey_course(spec: CourseSpec, *, cell_m: float = CELL_M) -> Survey:
         raw_distance_m=lap.raw_distance_m,
         raw_elevation_m=lap.raw_elevation_m,
     )
-    dropped = 1.0 - len(track) / as_read.places()
-    report, refused = judged(Surveyed(spec, ridden.track, dropped, lap, report))
+    stood_km = sum(r.to_km - r.from_km for r in repairs if r.what == STOOD)
+    wandering = stood_km / float(track.read_km()[-1])
+    report, refused = judged(Surveyed(spec, ridden.track, wandering, lap, report))
     return Survey(_course(spec, track.name, lap, grid, report), refused)
 
 

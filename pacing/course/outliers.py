@@ -18,8 +18,9 @@ MOST_THROWN = 30
 RETURN_SHARE = 0.3
 THROWN_AT_END = 5
 FAR_AT_END_M = 5000.0
-STANDSTILL_RADIUS_M = 10.0
-STANDSTILL_PATH_M = 60.0
+STANDSTILL_RADII_M = (10.0, 5.0, 3.0)
+LINGERING_RADII = 5.0
+WHIRLING_RADII, WHIRLING_RAD = 3.0, 3.0 * np.pi
 
 
 def outliers(track: Track) -> NDArray[np.bool_]:
@@ -69,38 +70,55 @@ def _way_back(track: Track, step: Array, jumps: NDArray[np.intp], at: int) -> in
 
 
 def standstills(track: Track) -> list[tuple[int, int]]:
-    """First and last index of each run of points drawn while standing still.
+    """First and last index of each run of points drawn while standing still, in order.
 
-    More than ``STANDSTILL_PATH_M`` of line that does not leave ``STANDSTILL_RADIUS_M``: riding
-    through takes 2 radii, turning round there no more.
+    A line that does not leave a circle although it is longer than ``LINGERING_RADII`` radii, or
+    longer than ``WHIRLING_RADII`` and turning by more than ``WHIRLING_RAD`` in all. Riding
+    through takes 2 radii; turning back in it, half a turn and hardly more way.
     """
     east, north = steps(track.lat_deg, track.lon_deg)
     x, y = (np.concatenate([[0.0], np.cumsum(part)]) for part in (east, north))
-    way = np.concatenate([[0.0], np.cumsum(np.hypot(east, north))])
-    # Only where the point STANDSTILL_PATH_M of line later is still near need one look closer.
-    later = np.searchsorted(way, way + STANDSTILL_PATH_M)
-    later = np.minimum(later, len(way) - 1)
-    near = np.hypot(x[later] - x, y[later] - y) < 2 * STANDSTILL_RADIUS_M
+    turn = np.abs((np.diff(np.arctan2(east, north)) + np.pi) % (2 * np.pi) - np.pi)
+    turned = np.concatenate([[0.0, 0.0], np.cumsum(turn)])[: len(x)]
+    runs: list[tuple[int, int]] = []
+    taken = np.zeros(len(x), dtype=bool)
+    for radius in STANDSTILL_RADII_M:
+        for first, last in _lingering(x, y, turned, radius):
+            if not taken[first : last + 1].any():
+                taken[first : last + 1] = True
+                runs.append((first, last))
+    return sorted(runs)
+
+
+def _lingering(x: Array, y: Array, turned: Array, radius_m: float) -> list[tuple[int, int]]:
+    """Runs of points that linger within a circle of a radius."""
+    way = np.concatenate([[0.0], np.cumsum(np.hypot(np.diff(x), np.diff(y)))])
+    # Only where the point so much of line later is still near need one look closer.
+    least = WHIRLING_RADII * radius_m
+    later = np.minimum(np.searchsorted(way, way + least), len(way) - 1)
+    near = np.hypot(x[later] - x, y[later] - y) < 2 * radius_m
     runs: list[tuple[int, int]] = []
     free_from = 0
-    for first in np.flatnonzero(near & (way[later] - way >= 0.8 * STANDSTILL_PATH_M)):
+    for first in np.flatnonzero(near & (way[later] - way >= 0.8 * least)).tolist():
         if first < free_from:
             continue
-        last = _last_within(x, y, int(first), x[first], y[first])
+        last = _last_within(x, y, first, radius_m, x[first], y[first])
         middle = slice(first, last + 1)
-        last = max(last, _last_within(x, y, int(first), x[middle].mean(), y[middle].mean()))
-        if way[last] - way[first] > STANDSTILL_PATH_M:
-            runs.append((int(first), last))
+        last = max(last, _last_within(x, y, first, radius_m, x[middle].mean(), y[middle].mean()))
+        radii = (way[last] - way[first]) / radius_m
+        whirls = turned[last] - turned[min(first + 1, last)] > WHIRLING_RAD
+        if radii > LINGERING_RADII or (radii > WHIRLING_RADII and whirls):
+            runs.append((first, last))
             free_from = last + 1
     return runs
 
 
-def _last_within(x: Array, y: Array, first: int, x_0: float, y_0: float) -> int:
+def _last_within(x: Array, y: Array, first: int, radius_m: float, x_0: float, y_0: float) -> int:
     """The last point from ``first`` on before the line leaves the circle around a place."""
     start, width = first + 1, 64
     while start < len(x):
         part = slice(start, start + width)
-        out = np.hypot(x[part] - x_0, y[part] - y_0) > STANDSTILL_RADIUS_M
+        out = np.hypot(x[part] - x_0, y[part] - y_0) > radius_m
         if out.any():
             return start + int(np.argmax(out)) - 1
         start, width = start + width, 2 * width

@@ -17,6 +17,8 @@ from pacing.course.track import Track
 Array = NDArray[np.float64]
 
 OFF_THE_LINE = "points far off the line left out"
+STOOD = "wandering at a standstill made one point"
+MERGED = "repeated points merged"
 SAME_POINT_M = 0.02
 
 
@@ -79,7 +81,7 @@ def _without_duplicates(track: Track) -> tuple[Track, list[Repair]]:
     km = track.read_km()
     return _merged(track, np.cumsum(new) - 1), [
         Repair(
-            "repeated points merged",
+            MERGED,
             float(km[doubles[0]]),
             float(km[doubles[-1]]),
             _points(len(doubles)),
@@ -98,7 +100,7 @@ def _without_standstills(track: Track) -> tuple[Track, list[Repair]]:
     km = track.read_km()
     return _merged(track, np.cumsum(new) - 1), [
         Repair(
-            "wandering at a standstill made one point",
+            STOOD,
             float(km[first]),
             float(km[last]),
             f"{_points(last - first + 1)}, {1000 * (km[last] - km[first]):.0f} m of line",

@@ -42,11 +42,6 @@ class Track:
             return along_m(self.lat_deg, self.lon_deg) / 1000.0
         return self.read_m / 1000.0
 
-    def places(self) -> int:
-        """Number of points without those that repeat the one before."""
-        moves = (np.diff(self.lat_deg) != 0.0) | (np.diff(self.lon_deg) != 0.0)
-        return 1 + int(np.sum(moves))
-
     def kept(self, keep: NDArray[np.bool_] | NDArray[np.int64]) -> Track:
         """The track with only some of its points (a mask or indices (P,))."""
         return replace(

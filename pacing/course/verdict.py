@@ -12,14 +12,16 @@ from pacing.course.extent import refuse_long
 from pacing.course.gaps import BRIDGED, refuse_wide_gaps
 from pacing.course.lap import Lap
 from pacing.course.missing import missing_share, refuse_missing_heights
-from pacing.course.repair import OFF_THE_LINE
+from pacing.course.repair import OFF_THE_LINE, STOOD
 from pacing.course.summary import steepest_stretch
 from pacing.course.track import Track
 from pacing.errors import UnusableInputError
 
 Array = NDArray[np.float64]
 
-MOST_POINTS_DROPPED = 0.10
+MOST_PLACES_THROWN = 10
+MOST_WANDERING = 0.10
+MANY_STANDSTILLS = 3
 STEEPEST_BELIEVED = 0.30
 STEEP = 0.20
 UNCERTAIN_PCT = 1.0
@@ -32,12 +34,12 @@ DRIFT_M = 5.0
 class Surveyed:
     """What the verdict is made from: the repaired points of the ridden part, the lap, the report.
 
-    ``dropped`` is the share of the file's points that were left out or merged where they wander.
+    ``wandering`` is the share of the file's line that was drawn while standing still.
     """
 
     spec: CourseSpec
     track: Track
-    dropped: float
+    wandering: float
     lap: Lap
     report: CourseReport
 
@@ -60,12 +62,14 @@ def refusals(found: Surveyed) -> tuple[UnusableInputError, ...]:
 
 
 def _refuse_scattered_points(found: Surveyed) -> UnusableInputError | None:
-    if found.dropped <= MOST_POINTS_DROPPED:
+    thrown = sum(repair.what == OFF_THE_LINE for repair in found.report.repairs)
+    if thrown <= MOST_PLACES_THROWN and found.wandering <= MOST_WANDERING:
         return None
     return UnusableInputError(
-        f"{100 * found.dropped:.0f} % of the points lie far off the line or wander on the spot",
+        f"the line is thrown far off at {thrown} places, and {100 * found.wandering:.0f} % of it "
+        "wanders on the spot",
         file=found.spec.file,
-        expected=f"at most {100 * MOST_POINTS_DROPPED:.0f} %",
+        expected=f"at most {MOST_PLACES_THROWN} places and {100 * MOST_WANDERING:.0f} %",
         mend="draw the course in a route planner, or bring a recording with clear reception",
     )
 
@@ -110,6 +114,11 @@ def _cautions_on_line(found: Surveyed) -> list[str]:
             f"points thrown off the line at km {thrown[0].from_km:.1f}"
             f"{f' and {len(thrown) - 1} more places' if len(thrown) > 1 else ''} are left out "
             f"({thrown[0].amount}): check that the course is whole"
+        )
+    stood = sum(repair.what == STOOD for repair in found.report.repairs)
+    if stood >= MANY_STANDSTILLS:
+        words.append(
+            f"the recorder stood still at {stood} places: bends close to them may be its wandering"
         )
     spacing = float(np.median(np.diff(1000.0 * found.track.read_km())))
     if spacing > SPARSE_M:

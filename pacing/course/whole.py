@@ -70,7 +70,7 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
         or refuse_missing_heights(track, spec.file)
     )
     line = smooth_line(track.lat_deg, track.lon_deg, grid_m=CELL_M)
-    # A line that is refused anyhow, and may be of any length, is not worth its heights.
+    # A line that is refused anyhow, and may be of any length, is not worth heights and bends.
     profile = _profile(track, line, spec, read=not (whole and hopeless))
     lap = Lap(
         run_m=line.distance_m,
@@ -89,7 +89,7 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
             raw_elevation_m=track.elevation_m[known],
             bends=tuple(
                 replace(bend, at_m=float(np.interp(bend.at_m, lap.run_m, lap.road_m)))
-                for bend in find_bends(line)
+                for bend in (() if whole and hopeless else find_bends(line))
             ),
         ),
         profile=profile,

@@ -10,12 +10,15 @@ from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
 from pacing.course.course import Course, Repair
+from pacing.course.gaps import SEGMENTS
+from pacing.course.repair import MERGED
 from pacing.errors import UnusableInputError
 from pacing.report import style, words
 
 WIDE_IN, STRIPS_IN, LINE_IN = 12.0, 5.6, 0.19
 LEFT_IN, RIGHT_IN, TOP_IN, FOOT_IN = 0.75, 0.2, 0.75, 0.5
 MOST_LISTED = 12
+STREWN = (MERGED, SEGMENTS)
 SUFFIXES = {".png": style.PNG_METADATA, ".pdf": style.PDF_METADATA, ".svg": {"Date": None}}
 
 
@@ -167,10 +170,10 @@ def _listed(repairs: tuple[Repair, ...]) -> list[Repair]:
 
 
 def _mark(heights: Axes, gradient: Axes, listed: list[Repair]) -> None:
-    """Shade where each repair lies, its number above; repairs of most of the way get none."""
+    """Shade where each repair lies, its number above; what is strewn over the way gets none."""
     end = heights.get_xlim()[1]
     for number, repair in enumerate(listed, 1):
-        if repair.to_km - repair.from_km > 0.5 * end:
+        if repair.what in STREWN:
             continue
         width = max(repair.to_km - repair.from_km, 0.0015 * end)
         for strip in (heights, gradient):
