@@ -109,7 +109,7 @@ def _batch(line: Line, corners: list[Corner]) -> _Batch:
 def _spacing(line: Line, corner: Corner) -> float:
     """Distance between the points within the bend, and the nearer one beyond it (mean square)."""
     at = line.knot_distance_m
-    first = int(np.searchsorted(at, corner.from_m))
+    first = min(int(np.searchsorted(at, corner.from_m)), at.size - 1)
     last = max(int(np.searchsorted(at, corner.to_m, side="right")) - 1, first)
     chord = np.diff(at)
     beyond = [chord[k] for k in (first - 1, last) if 0 <= k < chord.size]
