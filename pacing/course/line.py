@@ -333,6 +333,8 @@ def _arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array]:
     bend none to the straight. Where two turns stand alone the road between may be an even arc
     or a corner that fell between the points: the length is the mean of the two.
     """
+    if chord.size == 1:
+        return chord, np.zeros((1, 3))
     direction = np.diff(place, axis=0) / chord[:, None]
     change = np.diff(direction, axis=0)
     side = np.cross(direction[:-1], direction[1:])
