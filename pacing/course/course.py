@@ -24,13 +24,19 @@ class SlowPoint:
 
 @dataclass(frozen=True)
 class Bend:
-    """A bend found in the line. ``at_m`` is its middle; ``radius_m`` is None where unknown."""
+    """A bend found in the line. ``at_m`` is its middle; ``radius_m`` is None where unknown.
+
+    ``turn_deg`` is positive to the right; ``confidence`` is the chance that the true radius lies
+    within a quarter of the one found. Where the radius is unknown, ``widest_m`` is the widest the
+    points allow at its tightest place: a speed limit from it is rather too high than too low.
+    """
 
     at_m: float
     length_m: float
     radius_m: float | None
     turn_deg: float
     confidence: float
+    widest_m: float | None = None
 
 
 @dataclass(frozen=True)

@@ -25,11 +25,6 @@ DEEPEST_NESTING = 64
 EXPORT_AGAIN = "export the course again as GPX"
 GPX_EXPECTED = "a GPX file (XML whose outermost element is <gpx>)"
 _POINTS = {"trkpt": "trkseg", "rtept": "rte"}
-_HEARD = {
-    "ele": ("trkpt", "rtept"),
-    "time": ("trkpt", "rtept"),
-    "name": ("trk", "rte", "metadata", "gpx"),
-}
 _CUT_OFF = {
     expat.errors.codes[message]
     for message in (
@@ -89,7 +84,9 @@ class _Reader:
         self.open: list[str] = []
         self.name = ""
         self.points = 0
-        self.words: list[str] | None = None
+        self.point_depth = -1
+        self.words: list[str] = []
+        self.heard_depth = -1
         self.parser = expat.ParserCreate("utf-8")
         self.parser.buffer_text = True
         self.parser.StartDoctypeDeclHandler = self._refuse_doctype
@@ -122,17 +119,23 @@ class _Reader:
             raise self._error(f"elements nested deeper than {DEEPEST_NESTING}", "GPX")
         if _POINTS.get(name) == parent and self.lines:
             self._point(name, attributes)
-        elif parent in _HEARD.get(name, ()) and (self.lines or name == "name"):
-            self._listen()
+        elif self._is_told_of(name, parent):
+            self.words, self.heard_depth = [], len(self.open)
+            self.parser.CharacterDataHandler = self.words.append
         elif name in ("trk", "rte") and parent == "gpx":
             self.lines.append(_Line("track" if name == "trk" else "route"))
 
-    def _listen(self) -> None:
-        self.words = []
-        self.parser.CharacterDataHandler = self.words.append
+    def _is_told_of(self, name: str, parent: str) -> bool:
+        """Whether the text of the element just opened says something of a point or a line."""
+        if name in ("ele", "time"):
+            return len(self.open) == self.point_depth + 1
+        if name == "name" and parent in ("trk", "rte"):
+            return bool(self.lines)
+        return name == "name" and parent in ("metadata", "gpx")
 
     def _point(self, name: str, attributes: dict[str, str]) -> None:
         self.points += 1
+        self.point_depth = len(self.open)
         if self.points > MOST_POINTS:
             raise self._error(
                 f"more than {MOST_POINTS:,} points",
@@ -144,7 +147,7 @@ class _Reader:
         line.lon.append(self._coordinate(name, attributes, "lon", 180.0))
         line.ele.append(nan)
         line.time.append(nan)
-        line.segment.append(max(line.segments, 0))
+        line.segment.append(line.segments)
 
     def _coordinate(self, name: str, attributes: dict[str, str], key: str, limit: float) -> float:
         found = attributes.get(key)
@@ -160,19 +163,25 @@ class _Reader:
         return value
 
     def _end(self, tag: str) -> None:
+        depth = len(self.open)
         name = self.open.pop()
-        if name == "trkseg" and self.lines:
+        if depth == self.heard_depth:
+            self._heard(name)
+        elif depth == self.point_depth:
+            self.point_depth = -1
+        elif name == "trkseg" and self.lines:
             self.lines[-1].segments += 1
-        if self.words is None:
-            return
+
+    def _heard(self, name: str) -> None:
+        """The text of an element that was listened to goes where it belongs."""
         self.parser.CharacterDataHandler = None
-        text, self.words = "".join(self.words).strip(), None
-        parent = self.open[-1]
+        self.heard_depth = -1
+        text = "".join(self.words).strip()
         if name == "ele":
             self.lines[-1].ele[-1] = self._elevation(text)
         elif name == "time":
             self.lines[-1].time[-1] = _seconds(text)
-        elif parent in ("trk", "rte"):
+        elif self.open[-1] in ("trk", "rte"):
             self.lines[-1].name = text
         else:
             self.name = text

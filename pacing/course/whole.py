@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from pacing.course.bends import find_bends
 from pacing.course.course import CourseSpec, Repair
-from pacing.course.extent import refuse_long, refuse_short
+from pacing.course.extent import NoCourseError, refuse_long, refuse_short
 from pacing.course.gaps import refuse_wide_gaps
 from pacing.course.geodesy import along_m, distance_between_m, unwrapped_deg
 from pacing.course.heights import HeightProfile, smooth_heights
@@ -57,12 +57,12 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
     """Smooth the line and the heights of a repaired track.
 
     Where finish and start are one place passed in one direction, the road is a loop and its
-    heights join. Raises UnusableInputError for a line too short to smooth.
+    heights join. Raises NoCourseError for a line too short to smooth or too long for a grid.
     """
     length = float(along_m(track.lat_deg, track.lon_deg)[-1])
-    too_short = refuse_short(length, spec.file)
-    if too_short is not None:
-        raise too_short
+    no_course = refuse_short(length, spec.file) or refuse_long(length, spec.file)
+    if isinstance(no_course, NoCourseError):
+        raise no_course
     whole = spec.from_km is None and spec.to_km is None
     hopeless = (
         refuse_long(length, spec.file)
