@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import ast
+import importlib.util
+import shutil
 from dataclasses import dataclass
 from fnmatch import fnmatch
 from pathlib import Path
+from types import ModuleType
 
 import pytest
 
@@ -33,8 +36,15 @@ def _module(file: Path) -> Module:
     return Module(name, file, ast.parse(file.read_text(encoding="utf-8")))
 
 
-def _ignored(path: Path, patterns: list[str]) -> bool:
-    return any(fnmatch(part, pattern) for part in path.parts for pattern in patterns)
+def _ignored(file: Path, patterns: list[str]) -> bool:
+    """Whether git is told to leave ``file`` out: by a name, or by a path with a slash inside."""
+    whole = file.as_posix()
+    return any(
+        whole.startswith(f"{pattern}/")
+        if "/" in pattern
+        else any(fnmatch(part, pattern) for part in file.parts)
+        for pattern in patterns
+    )
 
 
 @pytest.fixture(scope="session")
@@ -53,6 +63,41 @@ def modules() -> tuple[Module, ...]:
 def own_files() -> tuple[Path, ...]:
     """Every file of the project, relative to its folder; without what git is told to ignore."""
     lines = (ROOT / ".gitignore").read_text(encoding="utf-8").split()
-    patterns = [line.strip("/").rsplit("/", 1)[-1] for line in lines]
+    patterns = [".git", *(line.strip("/") for line in lines)]
     found = (file.relative_to(ROOT) for file in ROOT.rglob("*") if file.is_file())
-    return tuple(sorted(file for file in found if not _ignored(file, [".git", *patterns])))
+    return tuple(sorted(file for file in found if not _ignored(file, patterns)))
+
+
+@pytest.fixture(scope="session")
+def readme() -> str:
+    """The README as it is."""
+    return (ROOT / "README.md").read_text(encoding="utf-8")
+
+
+@pytest.fixture(scope="session")
+def make_shown() -> ModuleType:
+    """The script that makes anew what is shown, ``demo/make.py``."""
+    spec = importlib.util.spec_from_file_location("demo_make", ROOT / "demo" / "make.py")
+    assert spec is not None
+    assert spec.loader is not None
+    module = importlib.util.module_from_spec(spec)
+    spec.loader.exec_module(module)
+    return module
+
+
+@pytest.fixture(scope="session")
+def newcomer(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A folder that holds of the project only the demo race and the courses."""
+    folder = tmp_path_factory.mktemp("newcomer")
+    (folder / "demo").mkdir()
+    shutil.copy(ROOT / "demo" / "race.toml", folder / "demo")
+    shutil.copytree(ROOT / "courses", folder / "courses")
+    return folder
+
+
+@pytest.fixture(scope="session")
+def demo_printed(make_shown: ModuleType, newcomer: Path) -> str:
+    """What the demo prints today; its output folder is ``demo/out`` of `newcomer`."""
+    printed = make_shown.plan_demo(newcomer)
+    assert isinstance(printed, str)
+    return printed
