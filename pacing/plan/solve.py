@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,7 +15,9 @@ from pacing.plan.problem import Cuts, Problem, Ride, ride
 Array = NDArray[np.float64]
 
 MOST_ITERATIONS = 300
-MOST_BOUND_CHANGES = 8
+MOST_SIDE_CHANGES = 12
+CROSSING_W = 1e-3
+LEAST_CROSSING_GAIN_S = 1e-3
 TIME_TOLERANCE_S = 1e-5
 JOULES_PER_UNIT = 1000.0
 EVENNESS = 0.05
@@ -36,6 +38,13 @@ class Solution:
     evaluations: int
     multipliers_s_per_j: Array
     kkt_residual: float
+
+
+class _Bounds(NamedTuple):
+    """Lowest and highest power of each piece (n,)."""
+
+    low: Array
+    high: Array
 
 
 @dataclass
@@ -66,22 +75,17 @@ def power_bounds_w(problem: Problem, ridden: Ride) -> tuple[Array, Array]:
     high = np.full(starts.size, problem.max_power_w)
     early = ridden.motion.elapsed_s[starts] < 30.0
     high[early] = np.minimum(high[early], problem.first_30_s_max_w)
-    fresh = _rested_pieces(ridden)
-    at_critical = problem.critical_power_w[starts] * problem.power_share[starts]
-    low[fresh] = np.maximum(low[fresh], np.minimum(at_critical[fresh], high[fresh]))
     return low, np.maximum(low, high)
 
 
-def _rested_pieces(ridden: Ride) -> NDArray[np.bool_]:
-    """The first pieces, up to and with the first ridden above critical power (n,).
+def _held_to_sides(low: Array, high: Array, at_critical: Array, above: Array) -> _Bounds:
+    """Bounds (n,) that keep each power on its side of critical power.
 
-    W′ is full there, so less than critical power loses time and gains nothing; where that is
-    not ruled out, the kink of a full W′ stops the solver short.
+    At critical power spending turns into recovering and the slopes of W′ jump. On either side
+    everything is smooth, so the solver is kept to one and the sides are changed between runs.
     """
-    if ridden.problem.w_start_j is not None:
-        return np.zeros(ridden.starts.size, dtype=bool)
-    spending = np.logical_or.reduceat(ridden.excess_w > 1e-3, ridden.starts)
-    return np.concatenate([[True], ~np.logical_or.accumulate(spending)[:-1]])
+    split = np.clip(at_critical, low, high)
+    return _Bounds(np.where(above, split, low), np.where(above, high, split))
 
 
 def standard_step_w(ridden: Ride) -> Array:
@@ -140,25 +144,44 @@ def solve(
     Powers marked ``fixed`` (n,) stay as they are. ``evenness`` weighs the near-ties towards
     even power (0: time alone), see `_Evenness`.
     """
-    first = ride(problem, starts, power_w, guess_m_s=guess_m_s)
+    ridden = ride(problem, starts, power_w, guess_m_s=guess_m_s)
     fixed = np.zeros(starts.size, dtype=bool) if fixed is None else fixed
-
-    def bounds(ridden: Ride) -> tuple[Array, Array]:
-        low, high = power_bounds_w(problem, ridden)
-        return np.where(fixed, power_w, low), np.where(fixed, power_w, high)
-
-    low, high = bounds(first)
+    at_critical = problem.critical_power_w[starts] * problem.power_share[starts]
+    above = power_w >= at_critical
     iterations = evaluations = 0
-    for _ in range(MOST_BOUND_CHANGES):
-        solution = _solve_within(first, low, high, tolerance_s, evenness)
+    for _ in range(MOST_SIDE_CHANGES):
+        low, high = power_bounds_w(problem, ridden)
+        bounds = _held_to_sides(low, high, at_critical, above)
+        bounds = _Bounds(
+            np.where(fixed, power_w, bounds.low), np.where(fixed, power_w, bounds.high)
+        )
+        solution = _solve_within(ridden, bounds, tolerance_s, evenness)
         iterations += solution.iterations
         evaluations += solution.evaluations
-        first = solution.ride
-        low, high = bounds(first)
-        outside = (first.power_w < low - 1e-6) | (first.power_w > high + 1e-6)
-        if not np.any(outside):
+        ridden = solution.ride
+        change = _pays_to_cross(solution, at_critical, above, evenness) & ~fixed
+        early_ends = np.any(ridden.power_w > power_bounds_w(problem, ridden)[1] + 1e-6)
+        if not np.any(change) and not early_ends:
             break
+        above = above ^ change
     return replace(solution, iterations=iterations, evaluations=evaluations)
+
+
+def _pays_to_cross(
+    solution: Solution, at_critical: Array, above: Array, evenness: float
+) -> NDArray[np.bool_]:
+    """Pieces (n,) held at critical power for which the other side is better."""
+    ridden = solution.ride
+    held = np.abs(ridden.power_w - at_critical) < 1e-6
+    if not np.any(held):
+        return held
+    aside = np.where(held, at_critical + np.where(above, -CROSSING_W, CROSSING_W), ridden.power_w)
+    beside = ride(ridden.problem, ridden.starts, aside, guess_m_s=ridden.motion.speed_m_s)
+    even = _Evenness(ridden, evenness)
+    price = solution.multipliers_s_per_j @ _margin_slopes(beside)
+    slope = beside.time_slopes + even.slopes(beside) - price
+    gain = np.where(above, slope, -slope) * standard_step_w(ridden)
+    return held & (gain > LEAST_CROSSING_GAIN_S)
 
 
 class _Evenness:
@@ -190,11 +213,10 @@ class _Evenness:
         return 2.0 * self.per_w2 * (ridden.power_w - self.mean_w) + self.per_joule * by_unused
 
 
-def _solve_within(
-    first: Ride, low: Array, high: Array, tolerance_s: float, evenness: float
-) -> Solution:
+def _solve_within(first: Ride, bounds: _Bounds, tolerance_s: float, evenness: float) -> Solution:
     """One run of SLSQP between fixed bounds."""
     problem, starts = first.problem, first.starts
+    low, high = bounds
     even = _Evenness(first, evenness)
     base = np.clip(first.power_w, low, high)
     step = standard_step_w(first)
