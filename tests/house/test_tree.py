@@ -96,7 +96,9 @@ def _imported(tree: ast.Module) -> set[str]:
 
 
 def _beside(file: Path, own_files: tuple[Path, ...]) -> set[str]:
-    """The package, and modules of the tests' and the courses' own."""
+    """The package, and for tests and scripts the modules of their own."""
+    if file.parts[0] == "pacing":
+        return {"pacing"}
     return {"pacing"} | {
         other.stem for other in own_files if other.parts[0] in (file.parts[0], "courses")
     }
