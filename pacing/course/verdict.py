@@ -24,7 +24,8 @@ MOST_WANDERING = 0.10
 MANY_STANDSTILLS = 3
 STEEPEST_BELIEVED = 0.30
 STEEP = 0.20
-UNCERTAIN_PCT = 1.0
+UNCERTAIN_PCT = 2.0
+MUCH_BRIDGED = 0.015
 SPARSE_M = 100.0
 SAME_PLACE_M = 30.0
 DRIFT_M = 5.0
@@ -141,6 +142,14 @@ def _cautions_on_heights(found: Surveyed) -> list[str]:
                 f"heights missing on {100 * share:.0f} % of the way, up to {longest:.0f} m at a "
                 "stretch, are interpolated"
             )
+    bridged = [repair for repair in report.repairs if repair.what.startswith("terrain ")]
+    way_km = sum(repair.to_km - repair.from_km for repair in bridged)
+    if 1000.0 * way_km > MUCH_BRIDGED * found.lap.length_m:
+        largest = max(bridged, key=lambda repair: repair.to_km - repair.from_km)
+        words.append(
+            f"heights that looked like terrain over or under the road are bridged over "
+            f"{way_km:.1f} km, the longest at km {largest.from_km:.1f}: no hill there?"
+        )
     if report.gradient_error_pct > UNCERTAIN_PCT:
         words.append(f"gradients over 100 m are known to {report.gradient_error_pct:.1f} % only")
     wall = steepest_stretch(found.lap.road_m, found.lap.elevation_m, 100.0)
