@@ -20,10 +20,14 @@ CLEAR_GAIN = 6.0
 GRID_ERROR_M = 0.4
 CLEAN_M = 0.12
 BAROMETER_M = 0.35
+SPARSE_M = 80.0
+RECORDER_STEPS_M = (0.2, 0.480469, 0.5)
 
 WHITE = Prior(HeightModel(0.3, 0.0, 15.0, 0.5), HeightModel(0.7, 0.0, 0.0, 1.5))
 FINE_GRID = Prior(HeightModel(0.3, 2.0, 15.0, 0.2), HeightModel(0.5, 1.0, 0.1, 0.7))
 COARSE_GRID = Prior(HeightModel(0.3, 2.0, 45.0, 0.2), HeightModel(0.5, 1.0, 0.05, 0.7))
+MOST_BEND_PCT = 0.8
+"""Coarse grids leave open how fast the gradient changes: no faster than a mountain road's."""
 AT_CHANGES = Prior(HeightModel(0.5, 0.0, 15.0, 1.0), HeightModel(0.5, 0.0, 0.0, 0.0))
 """For heights at the changes between steps, in steps: their noise is known."""
 
@@ -55,6 +59,11 @@ def judge_source(
         return Judged(STEPPED, model, "", f"all heights are whole steps of {step_m:g} m")
     if held:
         return Judged(TERRAIN_GRID, grid, "", "heights repeat until the next is read")
+    if not timed and step_m in RECORDER_STEPS_M:
+        sensor = "barometer" if noise < BAROMETER_M else "satellite"
+        return Judged(RECORDED, model, sensor, f"steps of {step_m:.2g} m, as recorders store")
+    if not timed and _spacing_m(points) > SPARSE_M:
+        return Judged(TERRAIN_GRID, grid, "", "no times, and points as far apart as a planner's")
     if wandering and not timed and model.error_m > GRID_ERROR_M:
         reason = f"no times, and errors of {model.error_m:.1f} m that wander along the road"
         return Judged(TERRAIN_GRID, grid, "", reason)
@@ -63,6 +72,10 @@ def judge_source(
     sensor = "barometer" if noise < BAROMETER_M else "satellite"
     reason = f"noise of {noise:.1f} m from point to point"
     return Judged(RECORDED, model, sensor, f"points with times, {reason}" if timed else reason)
+
+
+def _spacing_m(points: Points) -> float:
+    return float(points.at_m[-1] - points.at_m[0]) / max(len(points.at_m) - 1, 1)
 
 
 def as_told(points: Points, grid_m: Array, source: str) -> Judged:
@@ -80,5 +93,6 @@ def as_told(points: Points, grid_m: Array, source: str) -> Judged:
 def likelier_grid(points: Points, grid_m: Array) -> tuple[HeightModel, float]:
     """The likelier of a fine (about 30 m) and a coarse (about 90 m) terrain grid, and its cost."""
     fine = fit_model(*points, grid_m, FINE_GRID)
-    coarse = fit_model(*points, grid_m, COARSE_GRID)
-    return min(fine, coarse, key=lambda fit: fit[1])
+    coarse, cost = fit_model(*points, grid_m, COARSE_GRID)
+    coarse = coarse._replace(bend_pct=min(coarse.bend_pct, MOST_BEND_PCT))
+    return min(fine, (coarse, cost), key=lambda fit: fit[1])

@@ -9,10 +9,13 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
-STEPS_M = (20.0, 10.0, 5.0, 2.0, 1.0, 0.5, 0.2, 0.1)
+STEPS_M = (20.0, 10.0, 5.0, 2.0, 1.0, 0.5, 0.480469, 0.2, 0.1)
+"""Usual steps; 0.48 m is that of older hand-held receivers (found in recorded files)."""
 COARSE_M = 0.9
 SURE_SHARE = 0.05
 HELD_SHARE = 0.2
+FLICKER_POINTS = 5
+FLICKER_SHARE = 0.02
 
 
 class Points(NamedTuple):
@@ -47,12 +50,12 @@ def step_of(height_m: Array) -> float | None:
     for step in STEPS_M:
         off = np.abs(rises - step * np.round(rises / step))
         few = len(rises) < 3 and np.any(np.abs(height_m / step - np.round(height_m / step)) > 0.01)
-        if np.mean(off <= max(0.01 * step, 1e-6)) >= 0.995 and not few:
+        if np.mean(off <= (0.006 if step == 0.480469 else 0.01 * step)) >= 0.995 and not few:
             return step
     return None
 
 
-def without_held(points: Points) -> Points:
+def without_held(points: Points, step_m: float | None) -> Points:
     """One point, in the middle, for each run of equal heights, where planners held a height.
 
     A planner that reads a terrain grid every so often repeats a height until the next one. Rounded
@@ -65,6 +68,14 @@ def without_held(points: Points) -> Points:
     first = np.searchsorted(run, np.arange(run[-1] + 1))
     last = np.searchsorted(run, np.arange(run[-1] + 1), side="right") - 1
     return plain((points.at_m[first] + points.at_m[last]) / 2, points.height_m[first])
+
+
+def flickers(points: Points) -> bool:
+    """Whether rounded heights go to and fro between two steps, as noise before rounding makes."""
+    change = np.flatnonzero(np.diff(points.height_m) != 0)
+    rise = np.diff(points.height_m)[change]
+    back = (rise[1:] * rise[:-1] < 0) & (np.diff(change) <= FLICKER_POINTS)
+    return bool(len(back) > 0 and np.mean(back) > FLICKER_SHARE)
 
 
 def at_changes(points: Points, step_m: float) -> Points:

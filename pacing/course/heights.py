@@ -13,10 +13,16 @@ from pacing.course.height_artefacts import (
     STEEP_RECORDED,
     cut_humps,
     hump_repairs,
-    without_cliffs,
-    without_spikes,
 )
-from pacing.course.height_error import fixed_smoothing, halved_m, stated_error_pct
+from pacing.course.height_error import (
+    MORE_AT_CHANGES,
+    fixed_smoothing,
+    gradients_pct,
+    halved_m,
+    lessened,
+    stated_error_pct,
+)
+from pacing.course.height_jumps import without_cliffs, without_spikes
 from pacing.course.height_model import HeightModel, fit_model, road_heights, sums_of
 from pacing.course.height_source import (
     AT_CHANGES,
@@ -27,7 +33,14 @@ from pacing.course.height_source import (
     as_told,
     judge_source,
 )
-from pacing.course.height_steps import Points, at_changes, binned, step_of, without_held
+from pacing.course.height_steps import (
+    Points,
+    at_changes,
+    binned,
+    flickers,
+    step_of,
+    without_held,
+)
 from pacing.errors import UnusableInputError
 
 Array = NDArray[np.float64]
@@ -128,7 +141,7 @@ def _smooth(
     timed: bool,
 ) -> _Smooth:
     """Cut, judge, weigh and smooth."""
-    read = without_held(points)
+    read = without_held(points, step)
     held = len(read.at_m) < len(points.at_m)
     points = read
     keep, cuts = cut_humps(points, nodes, STEEP)
@@ -146,20 +159,27 @@ def _smooth(
         kept = points.chosen(keep)
         if cliffs:
             judged = judged._replace(model=as_told(kept, nodes, judged.source).model)
-    model = judged.model
-    if judged.source == STEPPED:
+    model, share = judged.model, 1.0
+    if judged.source == STEPPED and ((step or 1.0) >= 5 or not flickers(kept)):
         kept, model = _between_steps(kept, nodes, step or 1.0)
+        share = MORE_AT_CHANGES
     sums = sums_of(*kept, nodes)
-    road, departures = road_heights(sums, model, DRAWS)
-    spacing = float(nodes[-1] - nodes[0]) / max(len(kept.at_m), 1)
-    if smoothing_m is not None:
+    likeliest, departures = road_heights(sums, model, DRAWS)
+    error = share * stated_error_pct(likeliest, departures, model, judged, sums.step_m)
+    if smoothing_m is None:
+        road, _ = road_heights(sums, lessened(model, judged.source), 0)
+        spacing = float(nodes[-1] - nodes[0]) / max(len(kept.at_m), 1)
+        smoothing_m = halved_m(model, spacing, sums.step_m)
+    else:
         road = fixed_smoothing(sums, smoothing_m)
+        away = gradients_pct(road - likeliest, sums.step_m)
+        error = float(np.hypot(error, np.sqrt(np.mean(away**2))))
     return _Smooth(
         road=road,
         judged=judged,
         noise_m=float(np.hypot(model.error_m, model.white_m)),
-        gradient_error_pct=stated_error_pct(road, departures, model, judged, sums.step_m),
-        smoothing_m=smoothing_m or halved_m(model, spacing, sums.step_m),
+        gradient_error_pct=error,
+        smoothing_m=smoothing_m,
         repairs=(*cliffs, *hump_repairs(cuts)),
     )
 
