@@ -16,6 +16,7 @@ _LEAST_NOISE_M = 0.15
 _NOISE_SHARE = 0.05
 _MOST_HIDDEN_NOISE_M = 1.5
 _ROUNDS = 12
+_BATCH = 64
 _TIGHTEST_M = 2.0
 # Weak prior: the fit stays within some of the first guess (heading rad, logarithm of the radius).
 _HEADING_PRIOR = 0.6
@@ -61,72 +62,91 @@ class _Batch(NamedTuple):
     way: Array
     side: Array
     spacing: Array
+    apex_x: Array
+    apex_y: Array
 
 
 def fit_corners(line: Line, corners: list[Corner]) -> list[CornerFit]:
     """Least-squares fit of every corner to the points as given, by damped Gauss-Newton steps."""
-    if not corners:
-        return []
-    batch = _batch(line, corners)
+    chord = chord_headings_rad(line)
+    heading = np.concatenate((chord[:1], (chord[1:] + chord[:-1]) / 2, chord[-1:]))
+    order = sorted(
+        range(len(corners)), key=lambda i: corners[i].knots.stop - corners[i].knots.start
+    )
+    fits: dict[int, CornerFit] = {}
+    # Alike many points together, so that little of a batch is empty.
+    for first in range(0, len(order), _BATCH):
+        part = order[first : first + _BATCH]
+        fits.update(zip(part, _fit(line, heading, [corners[i] for i in part]), strict=True))
+    return [fits[i] for i in range(len(corners))]
+
+
+def _fit(line: Line, heading: Array, corners: list[Corner]) -> list[CornerFit]:
+    batch = _batch(line, heading, corners)
     guess = _first_guess(line, corners, batch)
     state = guess.copy()
     damping = np.full(len(corners), 1e-2)
-    cost = _cost(batch, state, guess)
+    rest, slopes = _residuals(batch, state)
+    cost = _cost(rest, state, guess)
     for _ in range(_ROUNDS):
-        rest, slopes = _residuals(batch, state)
-        step = _step(rest, slopes, state - guess, damping)
-        tried = state + step
-        new = _cost(batch, tried, guess)
+        tried = state + _step(rest, slopes, state - guess, damping)
+        new_rest, new_slopes = _residuals(batch, tried)
+        new = _cost(new_rest, tried, guess)
         better = new < cost
         state = np.where(better[:, None], tried, state)
+        rest = np.where(better[:, None], new_rest, rest)
+        slopes = np.where(better[:, None, None], new_slopes, slopes)
         cost = np.where(better, new, cost)
         damping = np.where(better, damping * 0.3, damping * 8.0)
-    return _results(line, batch, state)
+    return _results(line, batch, state, rest, slopes)
 
 
-def _batch(line: Line, corners: list[Corner]) -> _Batch:
-    heading = _knot_headings(line)
-    most = max(corner.knots.stop - corner.knots.start for corner in corners)
-    count = len(corners)
-    x, y = np.zeros((count, most)), np.zeros((count, most))
-    used, way = np.zeros((count, most)), np.zeros((count, most))
-    side, spacing = np.empty(count), np.empty(count)
-    for i, corner in enumerate(corners):
-        points = line.knot_raw_m[corner.knots]
-        origin = points[len(points) // 2]
-        east, north = _plane(origin)
-        n = len(points)
-        side[i] = np.sign(corner.heading_to_rad - corner.heading_from_rad)
-        # Left-hand axes with the heading's angle: x north, y east, mirrored for a right bend.
-        x[i, :n] = (points - origin) @ north
-        y[i, :n] = side[i] * ((points - origin) @ east)
-        way[i, :n] = side[i] * heading[corner.knots]
-        used[i, :n] = 1.0
-        spacing[i] = _spacing(line, corner)
-    return _Batch(x, y, used, way, side, spacing)
+def _batch(line: Line, heading: Array, corners: list[Corner]) -> _Batch:
+    start = np.array([corner.knots.start for corner in corners])
+    count = np.array([corner.knots.stop for corner in corners]) - start
+    side = np.sign([corner.heading_to_rad - corner.heading_from_rad for corner in corners])
+    steps = np.arange(count.max())
+    used = (steps < count[:, None]).astype(float)
+    knots = start[:, None] + np.minimum(steps, count[:, None] - 1)
+    origin = line.knot_raw_m[start + count // 2]
+    east, north = _plane(origin)
+    offset = line.knot_raw_m[knots] - origin[:, None, :]
+    middle = np.array([(corner.from_m + corner.to_m) / 2 for corner in corners])
+    apex = np.stack(
+        [np.interp(middle, line.knot_distance_m, axis) for axis in line.knot_raw_m.T], 1
+    )
+    # Left-hand axes with the heading's angle: x north, y east, mirrored for a left bend.
+    return _Batch(
+        x=np.einsum("bni,bi->bn", offset, north),
+        y=side[:, None] * np.einsum("bni,bi->bn", offset, east),
+        used=used,
+        way=side[:, None] * heading[knots],
+        side=side,
+        spacing=_spacing(line, corners),
+        apex_x=np.einsum("bi,bi->b", apex - origin, north),
+        apex_y=side * np.einsum("bi,bi->b", apex - origin, east),
+    )
 
 
-def _spacing(line: Line, corner: Corner) -> float:
-    """Distance between the points within the bend, and the nearer one beyond it (mean square)."""
+def _spacing(line: Line, corners: list[Corner]) -> Array:
+    """Distance between the points within each bend, and the nearer one beyond it (mean square)."""
     at = line.knot_distance_m
-    first = min(int(np.searchsorted(at, corner.from_m)), at.size - 1)
-    last = max(int(np.searchsorted(at, corner.to_m, side="right")) - 1, first)
     chord = np.diff(at)
-    beyond = [chord[k] for k in (first - 1, last) if 0 <= k < chord.size]
-    inside = np.concatenate((chord[first:last], [min(beyond)]))
-    return float(np.sqrt(np.mean(inside**2)))
-
-
-def _knot_headings(line: Line) -> Array:
-    chord = chord_headings_rad(line)
-    return np.concatenate((chord[:1], (chord[1:] + chord[:-1]) / 2, chord[-1:]))
+    squares = np.concatenate(([0.0], np.cumsum(chord**2)))
+    first = np.searchsorted(at, [corner.from_m for corner in corners])
+    first = np.minimum(first, at.size - 1)
+    last = np.searchsorted(at, [corner.to_m for corner in corners], side="right") - 1
+    last = np.maximum(last, first)
+    walled = np.concatenate(([np.inf], chord, [np.inf]))
+    beyond = np.minimum(walled[first], walled[last + 1])
+    return np.asarray(np.sqrt((squares[last] - squares[first] + beyond**2) / (last - first + 1)))
 
 
 def _plane(origin: Array) -> tuple[Array, Array]:
-    """Unit vectors to the east and to the north at a place."""
-    up = origin / np.linalg.norm(origin)
-    flat = np.hypot(up[0], up[1])
-    east = np.array([-up[1], up[0], 0.0]) / flat
+    """Unit vectors (B, 3) to the east and to the north at places (B, 3)."""
+    up = origin / np.linalg.norm(origin, axis=1)[:, None]
+    flat = np.maximum(np.hypot(up[:, 0], up[:, 1]), 1e-12)
+    east = np.stack([-up[:, 1], up[:, 0], np.zeros(len(up))], axis=1) / flat[:, None]
     return east, np.cross(up, east)
 
 
@@ -136,19 +156,12 @@ def _first_guess(line: Line, corners: list[Corner], batch: _Batch) -> Array:
     after = batch.side * np.array([corner.heading_to_rad for corner in corners])
     length = np.array([corner.to_m - corner.from_m for corner in corners])
     radius = np.maximum(length / np.maximum(after - before, 0.1), _TIGHTEST_M)
-    middle = np.array([(corner.to_m + corner.from_m) / 2 for corner in corners])
-    apex_x, apex_y = np.empty(len(corners)), np.empty(len(corners))
-    for i, corner in enumerate(corners):
-        at = line.knot_distance_m[corner.knots]
-        n = at.size
-        apex_x[i] = np.interp(middle[i], at, batch.x[i, :n])
-        apex_y[i] = np.interp(middle[i], at, batch.y[i, :n])
     mean = (before + after) / 2
     # y positive is to the left of x once mirrored: headings grow towards the bend's inside.
     return np.stack(
         [
-            apex_x - radius * np.sin(mean),
-            apex_y + radius * np.cos(mean),
+            batch.apex_x - radius * np.sin(mean),
+            batch.apex_y + radius * np.cos(mean),
             np.log(radius),
             before,
             after,
@@ -190,8 +203,7 @@ def _residuals(batch: _Batch, state: Array) -> tuple[Array, Array]:
 _PRIOR = np.array([0.0, 0.0, 1 / _RADIUS_PRIOR**2, 1 / _HEADING_PRIOR**2, 1 / _HEADING_PRIOR**2])
 
 
-def _cost(batch: _Batch, state: Array, guess: Array) -> Array:
-    rest, _ = _residuals(batch, state)
+def _cost(rest: Array, state: Array, guess: Array) -> Array:
     valid = (state[:, 4] > state[:, 3]) & (state[:, 2] < 7.0)
     cost = np.sum(rest**2, axis=1) + np.sum(_PRIOR * (state - guess) ** 2, axis=1)
     return np.where(valid, cost, np.inf)
@@ -211,8 +223,9 @@ def _spread(slopes: Array, noise: Array) -> Array:
     return np.asarray(np.linalg.inv(normal + np.diag(_PRIOR) + 1e-12 * np.eye(5)))
 
 
-def _results(line: Line, batch: _Batch, state: Array) -> list[CornerFit]:
-    rest, slopes = _residuals(batch, state)
+def _results(
+    line: Line, batch: _Batch, state: Array, rest: Array, slopes: Array
+) -> list[CornerFit]:
     radius = np.exp(state[:, 2])
     turn = state[:, 4] - state[:, 3]
     count = batch.used.sum(axis=1)

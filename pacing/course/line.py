@@ -355,9 +355,10 @@ def _arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array]:
     at_end /= at_end + length[2:] * np.maximum(way * curve[3:], 0.0) + 1e-12
     first = np.where(same, at_start * np.abs(turn[1:-2]), 0.0)
     last = np.where(same, at_end * np.abs(turn[2:-1]), 0.0)
-    # A long chord between two great turns is a straight between corners.
-    long = np.clip(chord / np.minimum(length[:-2], length[2:]) - 1.0, 0.0, 1.0)
-    trust = np.clip((2.0 - 1.0 * long - first - last) / (0.8 - 0.4 * long), 0.0, 1.0)
+    # More than a radian or two within a chord is a corner; a chord far longer than the next is a
+    # straight, whose points were left out because they lay on it.
+    trust = np.clip((2.0 - first - last) / 0.8, 0.0, 1.0)
+    trust *= np.clip(2.5 - chord / np.minimum(length[:-2], length[2:]), 0.0, 1.0)
     first, last = trust * first, trust * last
     alone = np.clip((at_start * at_end - 0.25) / 0.75, 0.0, 1.0) / 2
     # First and last over the chord: an even arc has a third of the triangle's excess.
