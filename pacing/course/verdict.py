@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from pacing.course.course import CourseReport, CourseSpec
 from pacing.course.extent import refuse_long
 from pacing.course.gaps import BRIDGED, refuse_wide_gaps
+from pacing.course.geodesy import distances_m
 from pacing.course.lap import Lap
 from pacing.course.missing import missing_share, refuse_missing_heights
 from pacing.course.repair import OFF_THE_LINE, STOOD
@@ -158,10 +159,30 @@ def _cautions_on_heights(found: Surveyed) -> list[str]:
         words.append(
             f"100 m of {100 * gradient:.0f} % at km {at / 1000:.1f}: is the road really so steep?"
         )
+    drift = _drift_m(found.track)
+    if abs(drift) > DRIFT_M:
+        side = "higher" if drift > 0 else "lower"
+        words.append(
+            f"the finish is where the start was, but {abs(drift):.0f} m {side}: the heights drifted"
+        )
     height = found.lap.raw_elevation_m
     if height.size and not height.any():
         words.append("every height in the file is 0 m: is the course level?")
     return words
+
+
+def _drift_m(track: Track) -> float:
+    """How much higher [m] the heights end than they began at the same place; 0 elsewhere.
+
+    Of the points within ``SAME_PLACE_M`` of either end the middle height counts.
+    """
+    ends = [0, -1]
+    if distances_m(track.lat_deg[ends], track.lon_deg[ends])[0] > SAME_PLACE_M:
+        return 0.0
+    along = 1000.0 * track.read_km()
+    near = (along <= along[0] + SAME_PLACE_M, along >= along[-1] - SAME_PLACE_M)
+    first, last = (track.elevation_m[part & np.isfinite(track.elevation_m)] for part in near)
+    return float(np.median(last) - np.median(first)) if first.size and last.size else 0.0
 
 
 def judged(found: Surveyed) -> tuple[CourseReport, tuple[UnusableInputError, ...]]:
