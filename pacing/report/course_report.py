@@ -167,6 +167,8 @@ def _bends(course: Course) -> str:
         key=lambda bend: bend.radius_m or 0.0,
     )
     unknown = len(course.bends) - len(sharp)
+    if not course.bends and course.report.verdict == "unusable":
+        return ""
     if not course.bends:
         return "No bend that limits the speed was found."
     lines = [f"Sharpest bends of {len(course.bends)}; speeds are planned, not safe ones"]
@@ -184,7 +186,7 @@ def _bends(course: Course) -> str:
 
 def _headings(course: Course) -> str:
     share = [f"{h.towards} {100 * h.share:.0f} %" for h in headings(course)]
-    return "Heads towards  " + "  ".join(share)
+    return "Heads  " + "  ".join(share)
 
 
 def _repairs(repairs: tuple[Repair, ...]) -> str:
