@@ -117,30 +117,33 @@ def _linearise(
     drive_slope = np.where(slipping, 0.0, work / total)
     powered = coast - drive
 
-    # v1 = max(floor, min(limit, max(coast, min(powered, spin-out)))), told by residuals
+    # v1 = max(floor, min(limit, max(coast, min(powered, spin-out)))): told by how far each
+    # equation says e1 lies above its root, for residuals of unlike slopes can make it cycle
     e1 = energy[1:]
+    powered_to = to + drive_slope / v1
     spin = e1 - 0.5 * road.spin_out_m_s**2
     limit = e1 - 0.5 * road.limit_m_s[1:] ** 2
     floor = e1 - 0.5 * FLOOR_M_S**2
-    spinning = spin > powered
-    below = np.where(spinning, spin, powered)
-    coasting = coast < below
-    below = np.where(coasting, coast, below)
-    limited = limit > below
-    below = np.where(limited, limit, below)
-    floored = floor < below
+    above = powered / powered_to
+    spinning = spin > above
+    above = np.where(spinning, spin, above)
+    coasting = coast / to < above
+    above = np.where(coasting, coast / to, above)
+    limited = limit > above
+    above = np.where(limited, limit, above)
+    floored = floor < above
 
     mode = np.where(slipping, Mode.TRACTION, Mode.POWER).astype(np.int8)
     mode[spinning] = Mode.SPIN_OUT
     mode[coasting] = Mode.COAST
     mode[limited] = Mode.LIMIT
     mode[floored] = Mode.FLOOR
-    residual = np.where(floored, floor, below)
+    residual = np.choose(mode, (powered, powered, coast, spin, limit, floor))
 
     driven = mode <= Mode.TRACTION
     moving = driven | (mode == Mode.COAST)
     slopes = CellSlopes(
-        to=np.where(moving, to + np.where(driven, drive_slope / v1, 0.0), 1.0),
+        to=np.where(driven, powered_to, np.where(moving, to, 1.0)),
         start=np.where(moving, start + np.where(driven, drive_slope / v0_safe, 0.0), 0.0),
         power=np.where(mode == Mode.POWER, per_watt, 0.0),
     )
@@ -190,17 +193,20 @@ def _newton(
     road: Road, target_w: Array, energy: Array
 ) -> tuple[Array, CellSlopes, NDArray[np.int8]] | None:
     energy = energy.copy()
-    last_mode = None
+    last_mode, moved, calm = np.full(target_w.size, -1), np.zeros(target_w.size), False
+    share = np.ones(target_w.size)
     for _ in range(MOST_ITERATIONS):
         residual, slopes, mode = _linearise(road, target_w, energy)
         step = solve_bidiagonal(slopes.to, slopes.start, residual)
-        trial = energy[1:] - step
+        # a cell thrown to and fro across a kink is let go less far each time
+        thrown = (step * moved < 0.0) & (np.abs(step) > 0.5 * np.abs(moved))
+        share = np.where(thrown, 0.5 * share, np.minimum(1.0, 1.3 * share))
+        moved = share * step
         # an energy may fall to a tenth at most, so that speeds stay positive
-        energy[1:] = np.maximum(trial, 0.1 * energy[1:])
-        if last_mode is not None and np.array_equal(mode, last_mode):
-            worst = float(np.max(np.abs(step) / (1.0 + energy[1:])))
-            if worst < 1e-7:
-                return energy, slopes, mode
+        energy[1:] = np.maximum(energy[1:] - moved, 0.1 * energy[1:])
+        was_calm, calm = calm, float(np.max(np.abs(step) / (1.0 + energy[1:]))) < 1e-7
+        if calm and (was_calm or np.array_equal(mode, last_mode)):
+            return energy, slopes, mode
         last_mode = mode
     return None
 
