@@ -105,8 +105,8 @@ def make_road() -> Callable[..., Any]:
     from pacing.motion import Road
 
     def road(gradient: Any = 0.0, *, cells: int = 100, cell_m: Any = 10.0, **changes: Any) -> Road:
-        gradient = np.atleast_1d(np.asarray(gradient, dtype=float))
-        count = cells if gradient.size == 1 else gradient.size
+        gradient = np.asarray(gradient, dtype=float)
+        count = gradient.size if gradient.ndim else cells
         given: dict[str, Any] = {
             "mass_kg": 82.0,
             "crr": 0.004,
