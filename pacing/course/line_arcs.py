@@ -24,7 +24,7 @@ def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array
     side = np.sum(side * place[1:-1], axis=1)
     reach = (chord[1:] + chord[:-1]) / 2
     # What the noise left in the places may make of a straight is not road.
-    squared = np.sum(change * change, axis=1) - 2.0 * (noise_m / reach) ** 2
+    squared = np.sum(change * change, axis=1) - 6.0 * (noise_m / reach) ** 2
     turn = np.sign(side) * np.sqrt(np.maximum(squared, 0.0))
     curve = turn / reach
     # Two more at either end: beyond the first and the last point the road is straight.
@@ -43,7 +43,7 @@ def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array
     trust = np.clip((2.0 - first - last) / 0.8, 0.0, 1.0)
     trust *= np.clip(2.5 - chord / np.minimum(length[:-2], length[2:]), 0.0, 1.0)
     first, last = trust * first, trust * last
-    alone = np.clip((at_start * at_end - 0.25) / 0.75, 0.0, 1.0) / 2
+    alone = np.clip((at_start * at_end - 0.25) / 0.75, 0.0, 1.0) / 4
     # First and last over the chord: an even arc has a third of the triangle's excess.
     excess = first * last / 2 * ((1 - alone) / 3 + alone)
     inward = np.concatenate((change[:1], change)) + np.concatenate((change, change[-1:]))

@@ -13,6 +13,7 @@ Index = NDArray[np.intp]
 # Places where a cut may fall in the dynamic programme. Its time grows with the square of this
 # number and not with the length of the course; the cuts are then settled on the full grid.
 _MOST_PLACES = 500
+_MOST_ROUNDS = 3
 
 
 class _Sums(NamedTuple):
@@ -28,6 +29,10 @@ class _Sums(NamedTuple):
         load = self.load[end] - self.load[start]
         square = self.square[end] - self.square[start]
         return np.maximum(square - load * load / length, 0.0)
+
+    def total(self, cuts: Index) -> float:
+        """Misfit of all pieces."""
+        return float(np.sum(self.misfit(cuts[:-1], cuts[1:])))
 
 
 def cut_pieces(
@@ -68,8 +73,14 @@ def cut_pieces(
     if most_pieces == 1 or sums.length[-1] < 2.0 * shortest_m:
         return np.array([0, load.size], dtype=np.intp)
     places = _places(sums, _MOST_PLACES)
-    cuts = _best_cuts(sums, places, most_pieces, shortest_m)
-    return _settle(sums, cuts, shortest_m)
+    cuts = _settle(sums, _best_cuts(sums, places, most_pieces, shortest_m), shortest_m)
+    for _ in range(_MOST_ROUNDS):
+        around = _around(cuts, load.size, places)
+        again = _settle(sums, _best_cuts(sums, around, most_pieces, shortest_m), shortest_m)
+        if not sums.total(again) < sums.total(cuts) * (1.0 - 1e-6):
+            break
+        cuts = again
+    return cuts
 
 
 def _check(distance_m: Array, load: Array, most_pieces: int, shortest_m: float) -> None:
@@ -108,6 +119,14 @@ def _places(sums: _Sums, most: int) -> Index:
             lowest = lowest[price[lowest] <= np.median(price[lowest])]
         nodes = np.delete(nodes, lowest + 1)
     return nodes
+
+
+def _around(cuts: Index, last: int, places: Index) -> Index:
+    """Nodes near the cuts found, so that all cuts can be moved together, and every other place."""
+    reach = max(_MOST_PLACES // (2 * cuts.size), 1)
+    near = (cuts[:, None] + np.arange(-reach, reach + 1)).ravel()
+    near = np.concatenate((near, places[::2], [0, last]))
+    return np.unique(np.clip(near, 0, last))
 
 
 def _best_cuts(sums: _Sums, places: Index, most_pieces: int, shortest_m: float) -> Index:
