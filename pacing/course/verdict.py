@@ -143,13 +143,13 @@ def _cautions_on_heights(found: Surveyed) -> list[str]:
                 f"heights missing on {100 * share:.0f} % of the way, up to {longest:.0f} m at a "
                 "stretch, are interpolated"
             )
-    bridged = [repair for repair in report.repairs if repair.what.startswith("terrain ")]
+    bridged = [repair for repair in report.repairs if "no road has" in repair.what]
     way_km = sum(repair.to_km - repair.from_km for repair in bridged)
     if 1000.0 * way_km > MUCH_BRIDGED * found.lap.length_m:
         largest = max(bridged, key=lambda repair: repair.to_km - repair.from_km)
         words.append(
-            f"heights that looked like terrain over or under the road are bridged over "
-            f"{way_km:.1f} km, the longest at km {largest.from_km:.1f}: no hill there?"
+            f"humps and dips that no road has are bridged over {way_km:.1f} km, the longest at "
+            f"km {largest.from_km:.1f}: is there really no such hill?"
         )
     if report.gradient_error_pct > UNCERTAIN_PCT:
         words.append(f"gradients over 100 m are known to {report.gradient_error_pct:.1f} % only")

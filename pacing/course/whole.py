@@ -24,7 +24,6 @@ CELL_M = 10.0
 LOOP_WITHIN_M = 30.0
 LOOP_TURN_DEG = 90.0
 LEVEL, UNKNOWN = "level", "none"
-LOOP = "heights of a loop joined"
 
 
 @dataclass(frozen=True)
@@ -122,7 +121,6 @@ def _profile(track: Track, line: Line, spec: CourseSpec, *, read: bool) -> Heigh
     first = int(np.searchsorted(grid, at[0], side="right")) - 1
     last = max(int(np.searchsorted(grid, at[-1])), first + 1)
     inside = slice(first, last + 1)
-    closed = is_loop(line) and last - first == len(grid) - 1
     profile = smooth_heights(
         line.point_distance_m,
         track.elevation_m,
@@ -130,24 +128,13 @@ def _profile(track: Track, line: Line, spec: CourseSpec, *, read: bool) -> Heigh
         source=spec.heights,
         smoothing_m=spec.smoothing_m,
         timed=track.time_s is not None,
-        closed=closed,
+        closed=is_loop(line) and last - first == len(grid) - 1,
     )
     return replace(
         profile,
         distance_m=grid,
         elevation_m=np.interp(grid, grid[inside], profile.elevation_m),
-        repairs=(*profile.repairs, *(_joined(known, line.length_m) if closed else ())),
     )
-
-
-def _joined(known_m: Array, length_m: float) -> tuple[Repair, ...]:
-    """What joining the heights of a loop changed, where it is worth a word."""
-    misfit = float(known_m[-1] - known_m[0])
-    if abs(misfit) < 1.0:
-        return ()
-    side = "higher" if misfit > 0 else "lower"
-    amount = f"the finish was {abs(misfit):.0f} m {side} than the start"
-    return (Repair(LOOP, 0.0, length_m / 1000.0, amount),)
 
 
 def is_loop(line: Line) -> bool:

@@ -12,14 +12,13 @@ from matplotlib.ticker import MaxNLocator
 from pacing.course.course import Course, Repair
 from pacing.course.gaps import SEGMENTS
 from pacing.course.repair import MERGED
-from pacing.course.whole import LOOP
 from pacing.errors import UnusableInputError
 from pacing.report import style, words
 
 WIDE_IN, STRIPS_IN, LINE_IN = 12.0, 5.6, 0.19
 LEFT_IN, RIGHT_IN, TOP_IN, FOOT_IN = 0.75, 0.2, 0.75, 0.5
 MOST_LISTED = 12
-STREWN = (MERGED, SEGMENTS, LOOP)
+STREWN = (MERGED, SEGMENTS, "start and finish brought to one height")
 SUFFIXES = {".png": style.PNG_METADATA, ".pdf": style.PDF_METADATA, ".svg": {"Date": None}}
 
 

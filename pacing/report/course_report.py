@@ -76,6 +76,7 @@ def course_document(course: Course) -> dict[str, Any]:
                 "turn_deg": bend.turn_deg,
                 "limit_kmh": bend_limit_kmh(bend),
                 "confidence": bend.confidence,
+                "widest_m": bend.widest_m,
             }
             for bend in course.bends
         ],

@@ -65,8 +65,8 @@ def _time_s(kind, spacing_m, make_race):
     ("kind", "spacings_m"),
     [
         ("sweeping", (5.0, 20.0, 80.0)),
-        # Points 80 m apart do not tell a corner of 25 m from one of 60: its limit is not known then.
-        ("right angles", (5.0, 20.0)),
+        # Of a corner of 25 m radius, 39 m long, points 20 m apart do not tell the speed.
+        ("right angles", (5.0, 8.0)),
     ],
 )
 def test_a_road_sampled_closely_and_coarsely_takes_the_same_time(kind, spacings_m, make_race):

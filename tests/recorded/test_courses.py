@@ -54,8 +54,8 @@ COURSES = {
     "alpine_113km_tunnel_spikes": Expected(
         "usable",
         113.42,
-        (("terrain over a tunnel", "above the road"),),
-        ("terrain over or under the road",),
+        (("hump no road has, as over a tunnel", "above the road"),),
+        ("humps and dips that no road has are bridged",),
         why="tunnels and gorges were guessed to be level: one should look",
     ),
     "city_circuit_54km_jumps": Expected(
