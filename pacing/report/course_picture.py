@@ -120,6 +120,11 @@ def _draw_heights(strip: Axes, course: Course) -> None:
     )
     strip.plot(at, course.elevation_m, color=style.INK, linewidth=1.2, label="as smoothed")
     strip.set_ylim(floor, high + 0.12 * rise)
+    if not report.raw_elevation_m.size:
+        strip.set_yticks([])
+        what = "ridden as level" if report.height_source == "level" else "no heights"
+        _name(strip, f"height: {what}")
+        return
     _name(strip, "height, m")
     strip.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), ncols=2, borderaxespad=0.2)
 
@@ -139,7 +144,8 @@ def _draw_gradient(strip: Axes, course: Course) -> None:
     reach = max(2.0, 1.15 * float(np.max(np.abs(percent))))
     strip.set_ylim(-reach, reach)
     strip.yaxis.set_major_locator(MaxNLocator(5, steps=[1, 2, 5, 10]))
-    _name(strip, f"gradient over 100 m, % (band: known to {words.number(error, 1)} points)")
+    band = f" (band: known to {words.number(error, 1)} points)" if error > 0.0 else ""
+    _name(strip, f"gradient over 100 m, %{band}")
     strip.annotate(
         "km",
         (0, 0),
