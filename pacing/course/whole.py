@@ -7,22 +7,20 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from pacing.course.bends import find_bends
 from pacing.course.course import CourseSpec, Repair
 from pacing.course.extent import NoCourseError, refuse_long, refuse_short
 from pacing.course.gaps import refuse_wide_gaps
-from pacing.course.geodesy import along_m, distance_between_m, unwrapped_deg
+from pacing.course.geodesy import along_m, unwrapped_deg
 from pacing.course.heights import HeightProfile, smooth_heights
 from pacing.course.lap import Lap
 from pacing.course.line import Line, smooth_line
+from pacing.course.loop import bends_of, is_loop
 from pacing.course.missing import refuse_missing_heights
 from pacing.course.track import Track
 
 Array = NDArray[np.float64]
 
 CELL_M = 10.0
-LOOP_WITHIN_M = 30.0
-LOOP_TURN_DEG = 90.0
 LEVEL, UNKNOWN = "level", "none"
 
 
@@ -63,15 +61,9 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
     no_course = refuse_short(length, spec.file) or refuse_long(length, spec.file)
     if isinstance(no_course, NoCourseError):
         raise no_course
-    whole = spec.from_km is None and spec.to_km is None
-    hopeless = (
-        refuse_long(length, spec.file)
-        or refuse_wide_gaps(repairs, length, spec.file)
-        or refuse_missing_heights(track, spec.file)
-    )
+    worthwhile = not _is_hopeless(track, repairs, spec, length)
     line = smooth_line(track.lat_deg, track.lon_deg, grid_m=CELL_M)
-    # A line that is refused anyhow, and may be of any length, is not worth heights and bends.
-    profile = _profile(track, line, spec, read=not (whole and hopeless))
+    profile = _profile(track, line, spec, read=worthwhile)
     lap = Lap(
         run_m=line.distance_m,
         lat_deg=line.lat_deg,
@@ -89,7 +81,7 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
             raw_elevation_m=track.elevation_m[known],
             bends=tuple(
                 replace(bend, at_m=float(np.interp(bend.at_m, lap.run_m, lap.road_m)))
-                for bend in (() if whole and hopeless else find_bends(line))
+                for bend in (bends_of(track, line) if worthwhile else ())
             ),
         ),
         profile=profile,
@@ -99,6 +91,17 @@ def whole_road(track: Track, repairs: tuple[Repair, ...], spec: CourseSpec) -> W
             *_moved(repairs, track.read_km(), point_road),
             *_moved(profile.repairs, lap.run_m / 1000.0, lap.road_m),
         ),
+    )
+
+
+def _is_hopeless(
+    track: Track, repairs: tuple[Repair, ...], spec: CourseSpec, length_m: float
+) -> bool:
+    """Whether the line, which may be of any length, is refused whatever its heights and bends."""
+    return (spec.from_km is None and spec.to_km is None) and bool(
+        refuse_long(length_m, spec.file)
+        or refuse_wide_gaps(repairs, length_m, spec.file)
+        or (not spec.flat and refuse_missing_heights(track, spec.file))
     )
 
 
@@ -135,13 +138,6 @@ def _profile(track: Track, line: Line, spec: CourseSpec, *, read: bool) -> Heigh
         distance_m=grid,
         elevation_m=np.interp(grid, grid[inside], profile.elevation_m),
     )
-
-
-def is_loop(line: Line) -> bool:
-    """Whether the line ends where it began and passes on in the direction it set out."""
-    gap = distance_between_m(line.lat_deg[-1], line.lon_deg[-1], line.lat_deg[0], line.lon_deg[0])
-    turn = abs((line.heading_deg[0] - line.heading_deg[-1] + 180.0) % 360.0 - 180.0)
-    return gap <= LOOP_WITHIN_M and bool(turn <= LOOP_TURN_DEG)
 
 
 def _moved(repairs: tuple[Repair, ...], km: Array, road_m: Array) -> tuple[Repair, ...]:

@@ -256,3 +256,28 @@ def test_the_net_height_from_start_to_finish_is_kept(straight):
     assert course.elevation_m[-1] - course.elevation_m[0] == pytest.approx(
         last[2] - first[2], abs=0.01
     )
+
+
+def test_a_corner_at_the_start_line_is_met_on_every_lap(write, gpx):
+    # A square of 1 km sides with corners of 20 m radius; the file begins in the middle of one.
+    side, radius = 1000.0, 20.0
+    way = np.arange(0.0, 4 * (side + np.pi / 2 * radius), 4.0)
+    turn = np.zeros_like(way)
+    for n in range(4):
+        begun = n * (side + np.pi / 2 * radius) + side
+        turn += 90.0 * np.clip((way - begun) / (np.pi / 2 * radius), 0.0, 1.0)
+    heading = np.radians(turn)
+    north, east = (
+        np.concatenate([[0.0], np.cumsum(4.0 * f(heading[:-1]))]) for f in (np.cos, np.sin)
+    )
+    first = int(np.argmin(np.abs(turn - 45.0)))
+    azimuth, distance = np.degrees(np.arctan2(east, north)), np.hypot(east, north)
+    lon, lat, _ = GEOD.fwd(np.full(len(way), 3.0), np.full(len(way), 51.0), azimuth, distance)
+    points = [(float(a), float(o), 20.0) for a, o in zip(lat, lon, strict=True)]
+    points = [*points[first:], *points[: first + 1]]
+    course = load_course(CourseSpec(file=write(gpx(points)), laps=3))
+    lap = course.lap_length_m
+    over_the_line = [b for b in course.bends if abs((b.at_m + lap / 2) % lap - lap / 2) < 30.0]
+    assert len(over_the_line) == 3
+    assert all(b.radius_m == pytest.approx(20.0, rel=0.25) for b in over_the_line)
+    assert len(course.bends) == 12
