@@ -5,8 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from pacing.plan.marginal import Marginal
 from pacing.plan.problem import Cuts
-from pacing.plan.refine import curvature
 from pacing.plan.solve import Solution
 
 Array = NDArray[np.float64]
@@ -15,14 +15,13 @@ REACH_M = 160.0
 """How far a boundary may be moved to a readable place."""
 
 
-def placed(solution: Solution, slope: Array, readable: Cuts, *, shortest_s: float) -> Cuts:
+def placed(solution: Solution, value: Marginal, readable: Cuts, *, shortest_s: float) -> Cuts:
     """Move every boundary to the readable node where, to second order, it costs least.
 
-    ``slope`` is the reduced slope per cell at the solution. Boundaries that find no readable
-    node within `REACH_M`, or would make a cue too short, stay.
+    ``readable`` are the nodes at which a cue may begin. Boundaries that find none within
+    `REACH_M`, or would make a cue too short, stay.
     """
     ridden = solution.ride
-    bend = curvature(ridden)
     node_m = np.concatenate([[0.0], np.cumsum(ridden.problem.road.cell_m)])
     elapsed = ridden.motion.elapsed_s
     starts = ridden.starts.copy()
@@ -37,13 +36,11 @@ def placed(solution: Solution, slope: Array, readable: Cuts, *, shortest_s: floa
         if near.size == 0:
             continue
         step = float(ridden.power_w[k - 1] - ridden.power_w[k])
-        costs = [_cost_of_move(slope, bend, here, int(node), step) for node in near]
+        costs = [
+            value.change_s(slice(here, node), step)
+            if node > here
+            else value.change_s(slice(node, here), -step)
+            for node in near.tolist()
+        ]
         starts[k] = near[int(np.argmin(costs))]
     return starts
-
-
-def _cost_of_move(slope: Array, bend: Array, here: int, there: int, step_w: float) -> float:
-    """Lagrangian's change when the boundary goes from ``here`` to ``there``."""
-    a, b = min(here, there), max(here, there)
-    change = step_w if there > here else -step_w
-    return float(change * slope[a:b].sum() + 0.5 * change**2 * bend[a:b].sum())

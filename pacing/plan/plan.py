@@ -16,10 +16,11 @@ from pacing.course.pieces import cut_pieces
 from pacing.plan.cautions import plan_cautions
 from pacing.plan.cues import placed
 from pacing.plan.frames import cue_frame, model_inputs, piece_frame, split_frame, trace_frame
+from pacing.plan.marginal import marginal
 from pacing.plan.places import places_of, readable_nodes
 from pacing.plan.prepare import Prepared, prepare, settled
 from pacing.plan.problem import Cuts, Ride, ride
-from pacing.plan.refine import Refinement, merged_to, reduced_slope, refined
+from pacing.plan.refine import Refinement, merged_to, refined
 from pacing.plan.replay import refuse_reserve_broken, refuse_stall, replayed
 from pacing.plan.rounding import long_pieces, rounded, split_for_steps
 from pacing.plan.solve import Solution, solve
@@ -178,7 +179,7 @@ def _printed(prepared: Prepared, solution: Solution, step_w: float) -> Ride:
     race = prepared.race
     readable = readable_nodes(race.course, places_of(race.course))
     starts = placed(
-        solution, reduced_slope(solution), readable, shortest_s=race.plan.shortest_cue_s
+        solution, marginal(solution), readable, shortest_s=race.plan.shortest_cue_s
     )
     ridden = solution.ride
     again = solve(prepared.problem, starts, ridden.power_w, guess_m_s=ridden.motion.speed_m_s)

@@ -51,6 +51,11 @@ class Problem:
     reserve_everywhere: bool = True
 
     @property
+    def at_critical_w(self) -> Array:
+        """The power that is critical power in the position of each cell (N,)."""
+        return self.critical_power_w * self.power_share
+
+    @property
     def cells(self) -> int:
         """Number of grid cells."""
         return self.road.cell_m.size

@@ -3,49 +3,23 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
-from pacing.motion.slopes import cell_end_slopes, time_adjoint
-from pacing.plan.balance import prices
+from pacing.plan.marginal import Marginal, curvature, marginal
 from pacing.plan.problem import Cuts, Ride
 from pacing.plan.solve import Solution, solve
 
 Array = NDArray[np.float64]
 
-
-def reduced_slope(solution: Solution) -> Array:
-    """Slope of the Lagrangian in the power of each cell by itself (N,), seconds per watt.
-
-    Zero on the whole over each piece at the optimum; within a piece it says where more power
-    and where less would pay if the piece could be cut there.
-    """
-    ridden = solution.ride
-    problem, motion = ridden.problem, ridden.motion
-    price = prices(
-        problem.law,
-        motion,
-        runs=ridden.runs,
-        pieces=ridden.starts.size,
-        power_share=problem.power_share,
-        w_prime_j=problem.w_prime_j,
-        multipliers=solution.multipliers_s_per_j,
-        at_lowest=problem.reserve_everywhere,
-        start_j=problem.w_start_j,
-    )
-    ends = cell_end_slopes(problem.road, motion, ridden.target_w)
-    weight = 1.0 - price.per_s
-    per_energy = weight * ends.time_to - price.per_w * ends.power_to
-    per_energy[:-1] += (weight * ends.time_from - price.per_w * ends.power_from)[1:]
-    adjoint = time_adjoint(ends, ridden.cell_slopes, per_energy=per_energy)
-    return -price.per_w * ends.power_target + adjoint * ridden.cell_slopes.power
-
-
-def curvature(ridden: Ride) -> Array:
-    """Second slope of the Lagrangian in each cell's power (N,), quasi-steady, s/W²."""
-    power = np.maximum(ridden.target_w, 0.5 * float(np.mean(ridden.target_w)))
-    return ridden.motion.time_s / (3.0 * power**2)
+MOST_PLACES = 60
+"""Places looked at within a piece for a cut."""
+TRADE_FACTOR = 1.3
+"""A split must promise this much more than the merges that pay for it."""
+LEAST_GAIN = 2e-5
+"""Share of the time a round must gain to go on at full reach."""
 
 
 @dataclass(frozen=True)
@@ -57,75 +31,134 @@ class Refinement:
     iterations: int
 
 
+class Insert(NamedTuple):
+    """A stretch within one piece whose power should differ: nodes, watts, seconds gained."""
+
+    gain_s: float
+    first: int
+    last: int
+    step_w: float
+    cuts: int
+
+
 def refined(
-    solution: Solution, *, most_pieces: int, shortest_s: float, rounds: int = 6
+    solution: Solution, *, most_pieces: int, shortest_s: float, rounds: int = 12
 ) -> Refinement:
     """Cut better, with at most ``most_pieces`` pieces none shorter than ``shortest_s`` seconds.
 
     Each round splits where that gains most, merges where it costs least, moves every boundary
-    by the second-order model, and solves again; a round that does not gain is taken back and
-    half its moves are tried.
+    by the second-order model, and solves again; what does not gain is taken back and tried in
+    smaller steps.
     """
-    best, solves, iterations = solution, 1, solution.iterations
-    reach, exchanges = 1.0, 2
+    best, solves, iterations = solution, 0, 0
+    at_once, reach = max(2, most_pieces // 6), 1.0
     for _ in range(rounds):
-        slope = reduced_slope(best)
-        starts, power = _exchanged(
-            best, slope, most_pieces=most_pieces, shortest_s=shortest_s, exchanges=exchanges
-        )
-        starts = _moved(best, slope, starts, power, shortest_s=shortest_s, reach=reach)
-        if np.array_equal(starts, best.ride.starts):
-            if reach < 0.3:
+        value = marginal(best)
+        starts, power = _recut(best, value, most_pieces, shortest_s, at_once)
+        starts = _moved(best, value, starts, power, shortest_s=shortest_s, reach=reach)
+        gain = 0.0
+        if not np.array_equal(starts, best.ride.starts):
+            trial = solve(best.ride.problem, starts, power, guess_m_s=best.ride.motion.speed_m_s)
+            solves, iterations = solves + 1, iterations + trial.iterations
+            gain = best.ride.motion.total_s - trial.ride.motion.total_s
+            best = trial if gain > 0.0 else best
+        if gain < LEAST_GAIN * best.ride.motion.total_s:
+            if at_once == 0 or reach < 0.3:
                 break
-            reach, exchanges = 0.5 * reach, 0
-            continue
-        trial = solve(best.ride.problem, starts, power, guess_m_s=best.ride.motion.speed_m_s)
-        solves, iterations = solves + 1, iterations + trial.iterations
-        gain = best.ride.motion.total_s - trial.ride.motion.total_s
-        if gain > 0.0:
-            best = trial
-        if gain < 2e-5 * best.ride.motion.total_s:
-            if reach < 0.3:
-                break
-            reach, exchanges = 0.5 * reach, exchanges // 2
+            at_once, reach = at_once // 3, 0.5 * reach
     return Refinement(best, solves, iterations)
 
 
-def _exchanged(
-    solution: Solution, slope: Array, *, most_pieces: int, shortest_s: float, exchanges: int
+def _recut(
+    solution: Solution, value: Marginal, most_pieces: int, shortest_s: float, at_once: int
 ) -> tuple[Cuts, Array]:
-    """Split and merge pieces while a split gains more than the merge that pays for it costs."""
+    """Insert up to ``at_once`` stretches, paid for by merges where there are too many pieces."""
     ridden = solution.ride
-    elapsed, bend = ridden.motion.elapsed_s, curvature(ridden)
-    starts, power = ridden.starts, ridden.power_w
-    splits = _best_splits(starts, slope, bend, elapsed, shortest_s)
-    order = np.argsort([-gain for gain, _ in splits])
-    done, touched = 0, set[int]()
-    added: list[int] = []
-    dropped: list[int] = []
-    merges = _merge_costs(starts, power, bend)
-    by_cost = np.argsort(merges)
-    for k in order.tolist():
-        gain, at = splits[k]
-        if gain <= 0.0 or k in touched:
+    inserts = sorted(_best_inserts(ridden, value, shortest_s), reverse=True)
+    merges = _merge_costs(ridden.starts, ridden.power_w, value.bend)
+    piece_of = np.searchsorted(ridden.starts, [i.first for i in inserts], side="right") - 1
+    target, edges = ridden.target_w.copy(), set(ridden.starts.tolist())
+    touched: set[int] = set()
+    room = most_pieces - ridden.starts.size
+    for insert, piece in list(zip(inserts, piece_of.tolist(), strict=True)):
+        if at_once == 0 or insert.gain_s <= 0.0:
+            break
+        if touched & {piece - 1, piece, piece + 1}:
             continue
-        if starts.size + len(added) - len(dropped) >= most_pieces:
-            if done >= exchanges:
-                break
-            free = [
-                j
-                for j in by_cost.tolist()
-                if j not in touched and j + 1 not in touched and k not in (j, j + 1)
-            ]
-            if not free or gain < 1.3 * merges[free[0]]:
-                break
-            dropped.append(int(starts[free[0] + 1]))
-            touched |= {free[0], free[0] + 1}
-            done += 1
-        added.append(at)
-        touched.add(k)
-    new = np.array(sorted((set(starts.tolist()) - set(dropped)) | set(added)), dtype=np.intp)
-    return new, _averaged(ridden, new)
+        short = max(0, insert.cuts - room)
+        dropped = _cheapest(merges, short, touched | {piece - 1, piece})
+        if dropped is None or insert.gain_s < TRADE_FACTOR * float(np.sum(merges[dropped])):
+            continue
+        for pair in dropped:
+            edges.discard(int(ridden.starts[pair + 1]))
+            touched |= {pair, pair + 1}
+        touched.add(piece)
+        room += len(dropped) - insert.cuts
+        edges |= {insert.first} | ({insert.last} if insert.last < target.size else set())
+        target[insert.first : insert.last] += 0.5 * insert.step_w
+        at_once -= 1
+    starts = np.array(sorted(edges), dtype=np.intp)
+    return starts, _averaged(target, ridden.motion.time_s, starts)
+
+
+def _cheapest(merges: Array, count: int, untouchable: set[int]) -> list[int] | None:
+    """The ``count`` cheapest merges that leave ``untouchable`` pieces and each other alone."""
+    chosen: list[int] = []
+    taken = set(untouchable)
+    for pair in np.argsort(merges).tolist():
+        if len(chosen) == count:
+            break
+        if not taken & {pair, pair + 1}:
+            chosen.append(pair)
+            taken |= {pair - 1, pair, pair + 1}
+    return chosen if len(chosen) == count else None
+
+
+def _best_inserts(ridden: Ride, value: Marginal, shortest_s: float) -> list[Insert]:
+    """For each piece the stretch whose power is best changed, by one cut or by two."""
+    ends = np.append(ridden.starts[1:], value.up.size)
+    elapsed = ridden.motion.elapsed_s
+    found = []
+    for k, (a, b) in enumerate(zip(ridden.starts.tolist(), ends.tolist(), strict=True)):
+        if elapsed[b] - elapsed[a] >= 2.0 * shortest_s:
+            found.append(_best_insert(ridden, value, k, a, b, shortest_s))
+    return found
+
+
+def _best_insert(
+    ridden: Ride, value: Marginal, piece: int, a: int, b: int, shortest_s: float
+) -> Insert:
+    """The best stretch [first, last) of the piece [a, b), judged to second order."""
+    nodes = np.unique(np.linspace(a, b, min(b - a, MOST_PLACES) + 1).astype(np.intp))
+    at = ridden.motion.elapsed_s[nodes]
+    up, down, bend = (
+        np.append(0.0, np.cumsum(values[a:b]))[nodes - a]
+        for values in (value.up, value.down, value.bend)
+    )
+    i, j = np.triu_indices(nodes.size, 1)
+    whole = (i == 0) & (j == nodes.size - 1)
+    roomy = (at[j] - at[i] >= shortest_s) & ~whole
+    roomy &= (i == 0) | (at[i] - at[0] >= shortest_s)
+    roomy &= (j == nodes.size - 1) | (at[-1] - at[j] >= shortest_s)
+    i, j = i[roomy], j[roomy]
+    if i.size == 0:
+        return Insert(0.0, a, b, 0.0, 0)
+    inside = bend[j] - bend[i]
+    held = up[-1] != down[-1]
+    # a piece held at critical power leaves the rest as it is; any other gives way around it
+    stiff = inside if held else inside * (bend[-1] - inside) / bend[-1]
+    problem, power = ridden.problem, float(ridden.power_w[piece])
+    more = np.minimum(np.maximum(up[i] - up[j], 0.0) / stiff, problem.max_power_w - power)
+    less = np.minimum(np.maximum(down[j] - down[i], 0.0) / stiff, power - problem.min_power_w)
+    gain_more = more * (up[i] - up[j]) - 0.5 * stiff * more**2
+    gain_less = less * (down[j] - down[i]) - 0.5 * stiff * less**2
+    gain = np.maximum(gain_more, gain_less)
+    cuts = (i > 0).astype(int) + (j < nodes.size - 1)
+    pick = int(np.argmax(gain / cuts))
+    step = more[pick] if gain_more[pick] >= gain_less[pick] else -less[pick]
+    return Insert(
+        float(gain[pick]), int(nodes[i[pick]]), int(nodes[j[pick]]), float(step), int(cuts[pick])
+    )
 
 
 def merged_to(solution: Solution, most_pieces: int) -> Solution:
@@ -136,38 +169,13 @@ def merged_to(solution: Solution, most_pieces: int) -> Solution:
     while starts.size > max(1, most_pieces):
         drop = int(np.argmin(_merge_costs(starts, power, bend))) + 1
         starts = np.delete(starts, drop)
-        power = _averaged(ridden, starts)
+        power = _averaged(ridden.target_w, ridden.motion.time_s, starts)
     return solve(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
 
 
-def _averaged(ridden: Ride, starts: Cuts) -> Array:
-    """Time-weighted mean target of the old pieces over new ones."""
-    time = ridden.motion.time_s
-    work = np.add.reduceat(ridden.target_w * time, starts)
-    return work / np.add.reduceat(time, starts)
-
-
-def _best_splits(
-    starts: Cuts, slope: Array, bend: Array, elapsed: Array, shortest_s: float
-) -> list[tuple[float, int]]:
-    """For each piece the gain of its best split, and the cell where the second half begins."""
-    found = []
-    for a, b in zip(starts, np.append(starts[1:], slope.size), strict=True):
-        inside = np.arange(a + 1, b)
-        inside = inside[
-            (elapsed[inside] - elapsed[a] >= shortest_s)
-            & (elapsed[b] - elapsed[inside] >= shortest_s)
-        ]
-        if inside.size == 0:
-            found.append((0.0, -1))
-            continue
-        first = np.cumsum(slope[a:b])[inside - a - 1]
-        left = np.cumsum(bend[a:b])[inside - a - 1]
-        right = bend[a:b].sum() - left
-        gain = 0.5 * first**2 * (1.0 / left + 1.0 / right)
-        pick = int(np.argmax(gain))
-        found.append((float(gain[pick]), int(inside[pick])))
-    return found
+def _averaged(target_w: Array, time_s: Array, starts: Cuts) -> Array:
+    """Time-weighted mean target over pieces."""
+    return np.add.reduceat(target_w * time_s, starts) / np.add.reduceat(time_s, starts)
 
 
 def _merge_costs(starts: Cuts, power: Array, bend: Array) -> Array:
@@ -178,22 +186,22 @@ def _merge_costs(starts: Cuts, power: Array, bend: Array) -> Array:
 
 
 def _moved(
-    solution: Solution, slope: Array, starts: Cuts, power: Array, *, shortest_s: float, reach: float
+    solution: Solution,
+    value: Marginal,
+    starts: Cuts,
+    power: Array,
+    *,
+    shortest_s: float,
+    reach: float,
 ) -> Cuts:
     """Move each boundary to where the model's Lagrangian is least, a share ``reach`` of the way."""
-    bend, elapsed = curvature(solution.ride), solution.ride.motion.elapsed_s
+    elapsed = solution.ride.motion.elapsed_s
     moved = starts.copy()
-    ends = np.append(starts[1:], slope.size)
+    ends = np.append(starts[1:], value.up.size)
     for k in range(1, starts.size):
         here, step = int(starts[k]), float(power[k - 1] - power[k])
-        a = (int(moved[k - 1]) + here) // 2
-        b = (here + int(ends[k])) // 2
-        # change of the Lagrangian if the boundary stood at each node a..b
-        marginal = step * slope[a:b]
-        forward = np.cumsum(np.append(0.0, marginal))
-        change = forward - forward[here - a]
-        stiff = np.cumsum(np.append(0.0, 0.5 * step**2 * bend[a:b]))
-        change += np.abs(stiff - stiff[here - a])
+        a, b = (int(moved[k - 1]) + here) // 2, (here + int(ends[k])) // 2
+        change = _change_if_moved(value, a, here, b, step)
         target = a + int(np.argmin(change))
         there = here + round(reach * (target - here))
         low = np.searchsorted(elapsed, elapsed[moved[k - 1]] + shortest_s)
@@ -201,3 +209,16 @@ def _moved(
         if low <= high:
             moved[k] = min(max(there, int(low)), int(high))
     return moved
+
+
+def _change_if_moved(value: Marginal, a: int, here: int, b: int, step_w: float) -> Array:
+    """Lagrangian's change (b − a + 1,) if a boundary ``here`` stood at each node a..b.
+
+    Forward, the cells passed take the earlier piece's power, ``step_w`` more; backward the
+    later one's, ``step_w`` less.
+    """
+    later = value.up if step_w > 0.0 else value.down
+    earlier = value.down if step_w > 0.0 else value.up
+    forward = step_w * later[here:b] + 0.5 * step_w**2 * value.bend[here:b]
+    backward = -step_w * earlier[a:here] + 0.5 * step_w**2 * value.bend[a:here]
+    return np.concatenate([np.cumsum(backward[::-1])[::-1], [0.0], np.cumsum(forward)])

@@ -8,8 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.plan.balance import run_slopes, starting_pools
+from pacing.plan.marginal import curvature
 from pacing.plan.problem import Cuts, Ride, ride
-from pacing.plan.refine import curvature
 from pacing.plan.solve import Solution, power_bounds_w
 
 Array = NDArray[np.float64]

@@ -146,7 +146,7 @@ def solve(
     """
     ridden = ride(problem, starts, power_w, guess_m_s=guess_m_s)
     fixed = np.zeros(starts.size, dtype=bool) if fixed is None else fixed
-    at_critical = problem.critical_power_w[starts] * problem.power_share[starts]
+    at_critical = problem.at_critical_w[starts]
     above = power_w >= at_critical
     iterations = evaluations = 0
     for _ in range(MOST_SIDE_CHANGES):
@@ -291,7 +291,7 @@ def best_constant(problem: Problem) -> Ride:
         memory["last"] = ride(problem, start, np.array([power]), guess_m_s=guess)
         return float(np.min(margins_j(memory["last"])))
 
-    never_spends = float(np.min(problem.critical_power_w * problem.power_share))
+    never_spends = float(np.min(problem.at_critical_w))
     low = max(problem.min_power_w, min(never_spends, problem.max_power_w))
     if margin(problem.max_power_w) >= 0.0:
         return memory["last"]
