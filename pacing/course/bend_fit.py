@@ -17,6 +17,8 @@ _NOISE_SHARE = 0.05
 _MOST_HIDDEN_NOISE_M = 1.5
 _ROUNDS = 12
 _BATCH = 64
+# Share of the bulge of an arc between two points that stays unknown; from arcs with clean points.
+_HIDDEN = 0.4
 _TIGHTEST_M = 2.0
 # Weak prior: the fit stays within some of the first guess (heading rad, logarithm of the radius).
 _HEADING_PRIOR = 0.6
@@ -232,7 +234,7 @@ def _results(
     misfit = np.sqrt(np.sum(rest**2, axis=1) / count)
     spread = np.sqrt(np.sum(rest**2, axis=1) / np.maximum(count - 5, 1))
     # Between points the road may bulge by what an arc does, and that is not known.
-    hidden = np.minimum(batch.spacing**2 / (8 * radius), batch.spacing / 2)
+    hidden = np.minimum(_HIDDEN * batch.spacing**2 / (8 * radius), batch.spacing / 2)
     noise = np.maximum(likely_noise_m(line, batch.spacing), spread)
     spread_of_turn = _spread(slopes, noise)
     turn_error = np.sqrt(

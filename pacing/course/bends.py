@@ -37,6 +37,7 @@ LEAST_CONFIDENCE = 0.65
 _WITHIN = 0.25
 _LONGEST_FLANK_M = 100.0
 _HOOK_REACH_M = 25.0
+_WIDEST_BOUND_M = 400.0
 
 
 class _Road(NamedTuple):
@@ -109,7 +110,7 @@ def _bounded(road: _Road, bend: Bend) -> Bend:
     reach = bend.length_m / 2 + 1.0
     first, last = np.searchsorted(at, [bend.at_m - reach, bend.at_m + reach])
     widest = float(np.min(road.widest_m[first:last], initial=np.inf))
-    if not np.isfinite(widest) or widest > WIDEST_M:
+    if not np.isfinite(widest) or widest > _WIDEST_BOUND_M:
         return bend
     # Any radius from the tightest ridden to the widest possible is as likely as any other share.
     likely = float(np.sqrt(TIGHTEST_M * max(widest, TIGHTEST_M)))

@@ -28,7 +28,7 @@ class Bend:
 
     ``turn_deg`` is positive to the right; ``confidence`` is the chance that the true radius lies
     within a quarter of the one found. Where the radius is unknown, ``widest_m`` is the widest the
-    points allow at its tightest place: a speed limit from it is rather too high than too low.
+    points allow at its tightest place.
     """
 
     at_m: float
@@ -37,6 +37,18 @@ class Bend:
     turn_deg: float
     confidence: float
     widest_m: float | None = None
+
+    @property
+    def planning_radius_m(self) -> float | None:
+        """The radius to plan with: the one found, else a guess from the widest, if any.
+
+        A bend is hardly ever as wide as its points allow, and the less so the wider that is. The
+        two figures were chosen so that invented roads with bends of 13 to 130 m take as long from
+        points 20 to 80 m apart as from points 5 m apart.
+        """
+        if self.radius_m is not None:
+            return self.radius_m
+        return None if self.widest_m is None else 1.0 / (1.0 / (0.75 * self.widest_m) + 0.01)
 
 
 @dataclass(frozen=True)

@@ -25,7 +25,8 @@ class Line:
     ``heading_deg`` (0 north, 90 east) in the cells (N,). ``position_noise_m`` is the standard
     deviation of the points from the line in each direction. ``point_distance_m`` (P,) is the
     distance along the line of every point given. Of the knots that carry the line (K,):
-    ``knot_distance_m``, and earth-centred places before and after smoothing (K, 3).
+    ``knot_distance_m``, earth-centred places after and before smoothing (K, 3), and how strongly
+    the road is taken to bend between them (K-1,).
     All distances are horizontal, on the WGS84 ellipsoid.
     """
 
@@ -40,6 +41,7 @@ class Line:
     knot_distance_m: Array
     knot_m: Array
     knot_raw_m: Array
+    chord_curvature_per_m: Array
 
     @property
     def length_m(self) -> float:
@@ -93,6 +95,7 @@ def smooth_line(lat_deg: Array, lon_deg: Array, *, grid_m: float = 10.0) -> Line
         knot_distance_m=knot_distance,
         knot_m=smooth.place_m,
         knot_raw_m=points[kept],
+        chord_curvature_per_m=np.linalg.norm(bend, axis=1),
     )
 
 

@@ -50,8 +50,9 @@ def node_limits_m_s(course: Course, *, max_speed_m_s: float, dry: bool) -> Array
     limit = np.full(course.distance_m.size, max_speed_m_s)
     lateral_g = LATERAL_G_DRY if dry else LATERAL_G_WET
     for bend in course.bends:
-        if bend.radius_m is not None:
-            speed = float(bend_speed_m_s(bend.radius_m, lateral_g=lateral_g))
+        radius_m = bend.planning_radius_m
+        if radius_m is not None:
+            speed = float(bend_speed_m_s(radius_m, lateral_g=lateral_g))
             _lower(limit, course.distance_m, bend.at_m, bend.length_m, speed)
     for point in course.slow_points:
         _lower(limit, course.distance_m, point.at_m, point.length_m, point.speed_m_s)

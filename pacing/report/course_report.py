@@ -44,9 +44,10 @@ SOURCES = {
 
 def bend_limit_kmh(bend: Bend) -> float | None:
     """Planned speed through a bend on a dry road, None where it is unknown or does not limit."""
-    if bend.radius_m is None:
+    radius_m = bend.planning_radius_m
+    if radius_m is None:
         return None
-    limit = KMH_PER_M_S * float(bend_speed_m_s(bend.radius_m, lateral_g=LATERAL_G_DRY))
+    limit = KMH_PER_M_S * float(bend_speed_m_s(radius_m, lateral_g=LATERAL_G_DRY))
     return limit if limit < LONGEST_SPEED_KMH_DRY else None
 
 
