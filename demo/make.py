@@ -49,7 +49,7 @@ def plan_demo(folder: Path) -> str:
         check=False,
     )
     if done.returncode != 0:
-        raise SystemExit(done.stderr)
+        raise RuntimeError(done.stderr)
     return done.stdout
 
 
