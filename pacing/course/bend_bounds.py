@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from pacing.course.line import Line, chord_headings_rad
+from pacing.course.line import Line
 
 Array = NDArray[np.float64]
 
@@ -15,6 +15,11 @@ TIGHTEST_M = 4.0
 TIGHTEST_DEAD_TURN_M = 2.5
 """The same for a dead turn round a cone; common practice."""
 
+TIGHT_TURN_DEG = 75.0
+"""A lesser turn is cut within the width of the road, however tightly it is drawn."""
+
+_ROOM_M = 1.5
+_BASE_M = 6.0
 _SAME_ROAD_M = 10.0
 _LOOK_BACK_M = np.arange(20.0, 101.0, 10.0)
 
@@ -23,16 +28,30 @@ def widest_radii_m(line: Line, noise_m: Array) -> Array:
     """Radius (K,) than which the road is tighter somewhere next to each knot, inf where straight.
 
     Of all curves through three points the circle is the one least bent at its tightest. The turn
-    is lessened by what the noise (K,) may add to it.
+    is lessened by what the noise (K,) may add to it. Points are taken at least a bicycle's length
+    or three apart, for nothing turns within less.
     """
-    turn = np.abs(np.diff(chord_headings_rad(line)))
-    chord = np.diff(line.knot_distance_m)
-    length = 2.0 / (1.0 / chord[:-1] + 1.0 / chord[1:])
-    turn = np.minimum(turn, np.pi) - 3.0 * noise_m[1:-1] / length
-    radius = np.full(line.knot_distance_m.size, np.inf)
+    at, place = line.knot_distance_m, line.knot_m
+    knot = np.arange(1, at.size - 1)
+    before = np.searchsorted(at, at[knot] - _BASE_M, side="right") - 1
+    after = np.searchsorted(at, at[knot] + _BASE_M)
+    before, after = np.clip(before, 0, knot - 1), np.clip(after, knot + 1, at.size - 1)
+    back, on = place[knot] - place[before], place[after] - place[knot]
+    one, other = np.linalg.norm(back, axis=1), np.linalg.norm(on, axis=1)
+    one, other = np.maximum(one, 1e-6), np.maximum(other, 1e-6)
+    turn = np.arccos(np.clip(np.sum(back * on, axis=1) / (one * other), -1.0, 1.0))
+    length = 2.0 / (1.0 / one + 1.0 / other)
+    turn -= 3.0 * noise_m[1:-1] / length
+    radius = np.full(at.size, np.inf)
     bent = turn > 0.05
     radius[1:-1][bent] = length[bent] / (2.0 * np.sin(turn[bent] / 2.0))
     return radius
+
+
+def ridden_radius_m(radius_m: float, turn_deg: float) -> float:
+    """Radius of the widest path round a bend on a road with some room to either side."""
+    half = np.radians(min(abs(turn_deg), 170.0)) / 2
+    return float(radius_m + _ROOM_M / (1.0 / np.cos(half) - 1.0))
 
 
 def dead_turn_radius_m(line: Line, at_m: float) -> float | None:

@@ -10,8 +10,10 @@ from numpy.typing import NDArray
 from scipy.special import erf
 
 from pacing.course.bend_bounds import (
+    TIGHT_TURN_DEG,
     TIGHTEST_M,
     dead_turn_radius_m,
+    ridden_radius_m,
     widest_radii_m,
 )
 from pacing.course.bend_fit import Corner, CornerFit, fit_corners, likely_noise_m
@@ -38,6 +40,7 @@ _WITHIN = 0.25
 _LONGEST_FLANK_M = 100.0
 _HOOK_REACH_M = 25.0
 _WIDEST_BOUND_M = 400.0
+_MOST_CONFIDENCE = 0.8
 
 
 class _Road(NamedTuple):
@@ -115,10 +118,10 @@ def _bounded(road: _Road, bend: Bend) -> Bend:
     # Any radius from the tightest ridden to the widest possible is as likely as any other share.
     likely = float(np.sqrt(TIGHTEST_M * max(widest, TIGHTEST_M)))
     room = np.log(max(widest / TIGHTEST_M, 1.0 + _WITHIN))
-    confidence = min(float(np.log((1 + _WITHIN) / (1 - _WITHIN)) / room), 1.0)
-    if confidence >= LEAST_CONFIDENCE:
+    confidence = min(float(np.log((1 + _WITHIN) / (1 - _WITHIN)) / room), _MOST_CONFIDENCE)
+    if confidence >= LEAST_CONFIDENCE and abs(bend.turn_deg) >= TIGHT_TURN_DEG:
         return replace(bend, radius_m=likely, confidence=confidence)
-    return replace(bend, widest_m=widest)
+    return replace(bend, widest_m=ridden_radius_m(widest, bend.turn_deg))
 
 
 def _without_hooks(turning: Turning, bends: list[Bend]) -> tuple[Bend, ...]:

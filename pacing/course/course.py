@@ -27,8 +27,8 @@ class Bend:
     """A bend found in the line. ``at_m`` is its middle; ``radius_m`` is None where unknown.
 
     ``turn_deg`` is positive to the right; ``confidence`` is the chance that the true radius lies
-    within a quarter of the one found. Where the radius is unknown, ``widest_m`` is the widest the
-    points allow at its tightest place.
+    within a quarter of the one found. Where the radius is unknown, ``widest_m`` is the widest path
+    that the points and the width of a road allow at its tightest place.
     """
 
     at_m: float
