@@ -161,9 +161,9 @@ def hump_repairs(cuts: list[Cut]) -> tuple[Repair, ...]:
     """One line of the report for each cut."""
     return tuple(
         Repair(
-            "terrain over a tunnel or cutting bridged"
+            "hump no road has, as over a tunnel, bridged"
             if cut.off_m > 0
-            else "terrain under a bridge or embankment bridged",
+            else "dip no road has, as under a bridge, bridged",
             cut.from_m / 1000,
             cut.to_m / 1000,
             f"{abs(cut.off_m):.0f} m {'above' if cut.off_m > 0 else 'below'} the road",

@@ -7,7 +7,12 @@ from numpy.typing import NDArray
 from scipy.linalg import solveh_banded
 
 from pacing.course.height_model import HeightModel, Sums, second_difference_bands
-from pacing.course.height_source import STEPPED, TERRAIN_GRID, Judged
+from pacing.course.height_source import (
+    RECORDED,
+    STEPPED,
+    TERRAIN_GRID,
+    Judged,
+)
 
 Array = NDArray[np.float64]
 
@@ -64,7 +69,7 @@ def stated_error_pct(
     speed that the gradient allows.
     """
     left_open = float(np.sqrt(np.mean(gradients_pct(departures_m, step_m) ** 2)))
-    if judged.source == TERRAIN_GRID:
+    if judged.source == TERRAIN_GRID or (judged.source == RECORDED and model.error_m > 0.5):
         return left_open * (MORE_COARSE if model.error_length_m > COARSE_LENGTH_M else MORE_FINE)
     if judged.source == STEPPED or judged.sensor != "barometer" or len(road_m) < 3:
         return left_open

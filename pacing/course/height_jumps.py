@@ -25,7 +25,8 @@ def find_jumps(points: Points, step_m: float | None) -> list[tuple[int, int | No
     """
     at, height = points.at_m, points.height_m
     rise, run = np.diff(height), np.maximum(np.diff(at), 1.0)
-    usual = 1.4826 * float(np.median(np.abs(rise[rise != 0]))) if np.any(rise != 0) else 0.0
+    some = np.abs(rise[rise != 0])
+    usual = 1.4826 * float(np.median(some)) if len(some) > 0.1 * len(rise) else 0.0
     least = max(CLIFF_M, 8 * usual, 2.5 * (step_m or 0.0))
     jumps = np.flatnonzero((np.abs(rise) > least) & (np.abs(rise) / run > CLIFF_SLOPE))
     found: list[tuple[int, int | None]] = []

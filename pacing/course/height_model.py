@@ -17,11 +17,11 @@ from scipy.optimize import minimize
 
 Array = NDArray[np.float64]
 
-LONGEST_FIT_NODES = 2400
-FIT_WINDOWS = 4
+LONGEST_FIT_NODES = 3200
+WINDOW_NODES = 200
 TRACE = 1e-30
 """Keeps what decays far from any point out of the slow denormal numbers."""
-SMALLEST, LARGEST = (1e-3, 1e-3, 1.0, 0.03), (10.0, 60.0, 400.0, 30.0)
+SMALLEST, LARGEST = (0.01, 0.01, 1.0, 0.03), (10.0, 60.0, 400.0, 30.0)
 
 
 class HeightModel(NamedTuple):
@@ -49,7 +49,10 @@ class Prior(NamedTuple):
 
 @dataclass(frozen=True)
 class Sums:
-    """Weighted sums over points, per node (N+1,): what fitting a chain of straight cells needs."""
+    """Weighted sums over points, per node (N+1,): what fitting a chain of straight cells needs.
+
+    The nodes may be those of several ``windows`` of one size, one after the other.
+    """
 
     step_m: float
     diagonal: Array
@@ -57,6 +60,7 @@ class Sums:
     moment: Array
     square: float
     count: int
+    windows: int = 1
 
     @property
     def nodes(self) -> int:
@@ -115,24 +119,30 @@ def _wandering_bands(nodes: int, keep: float) -> tuple[Array, float]:
     return bands, float(-(nodes - 2) * np.log(kick) - np.log(1 - near**2))
 
 
-def _system(sums: Sums, model: HeightModel) -> tuple[Array, Array, float]:
+def _system(
+    sums: Sums, model: HeightModel, local: Array | None = None
+) -> tuple[Array, Array, float]:
     """Bands, right side and constant of the posterior of road (and error) at the nodes.
 
     With a wandering error, road and error of a node stand side by side in the unknowns.
     """
     tight = 1 / model.white_m**2
     diagonal, beside, moment = sums.diagonal * tight, sums.beside * tight, sums.moment * tight
+    size = sums.nodes // sums.windows
     bend = (model.bend_pct / 100 * sums.step_m * np.sqrt(sums.step_m / 10)) ** 2
-    road = second_difference_bands(sums.nodes) / bend
-    constant = sums.count * np.log(model.white_m) + (sums.nodes - 2) / 2 * np.log(bend)
+    road = np.tile(second_difference_bands(size) / bend, sums.windows)
+    constant = sums.count * np.log(model.white_m) + sums.windows * (size - 2) / 2 * np.log(bend)
     if model.error_m == 0:
         road[0] += diagonal
         road[1, :-1] += beside
         return road, moment, float(constant)
     keep = float(np.exp(-sums.step_m / model.error_length_m))
-    error, log_determinant = _wandering_bands(sums.nodes, keep)
-    error /= model.error_m**2
-    constant += sums.nodes * np.log(model.error_m) - log_determinant / 2
+    error, log_determinant = _wandering_bands(size, keep)
+    error = np.tile(error / model.error_m**2, sums.windows)
+    if local is not None:
+        for offset in range(3):
+            error[offset, : sums.nodes - offset] /= local[offset:] * local[: sums.nodes - offset]
+    constant += sums.nodes * np.log(model.error_m) - sums.windows * log_determinant / 2
     bands = np.zeros((5, 2 * sums.nodes))
     bands[0, 0::2], bands[0, 1::2] = road[0] + diagonal, error[0] + diagonal
     bands[1, 0::2], bands[1, 1:-1:2] = diagonal + TRACE, beside
@@ -159,9 +169,9 @@ def fit_model(
 ) -> tuple[HeightModel, float]:
     """The most likely model under a prior, and its cost (lower is likelier).
 
-    Long courses are judged on a few windows, so that the time stays bounded.
+    Long courses are judged on windows all along, so that the time stays bounded.
     """
-    parts = [sums_of(*part) for part in _windows(at_m, height_m, weight, grid_m)]
+    sums = _sampled(at_m, height_m, weight, grid_m)
     median, spread = np.array(prior.median), np.array(prior.spread)
     free = spread > 0
     start = np.log(median[free])
@@ -175,7 +185,7 @@ def fit_model(
     def cost(logs: Array) -> float:
         model = model_at(logs)
         away = float(np.sum(((logs - start) / spread[free]) ** 2)) / 2
-        return sum(_cost(sums, model) for sums in parts) + away
+        return _cost(sums, model) + away
 
     simplex = start + np.vstack([np.zeros(len(start)), 0.5 * np.eye(len(start))])
     found = minimize(
@@ -187,29 +197,39 @@ def fit_model(
     return model_at(found.x), float(found.fun)
 
 
-def _windows(
-    at_m: Array, height_m: Array, weight: Array, grid_m: Array
-) -> list[tuple[Array, Array, Array, Array]]:
+def _sampled(at_m: Array, height_m: Array, weight: Array, grid_m: Array) -> Sums:
+    """Sums for the whole course, or for windows spread evenly along a long one."""
     nodes = len(grid_m)
     if nodes <= LONGEST_FIT_NODES:
-        return [(at_m, height_m, weight, grid_m)]
-    size = LONGEST_FIT_NODES // FIT_WINDOWS
-    windows = []
-    for start in np.linspace(0, nodes - size, FIT_WINDOWS).astype(int):
-        part = grid_m[start : start + size]
-        first, last = np.searchsorted(at_m, [part[0], part[-1]])
-        if last - first >= 3:
-            inside = slice(first, last)
-            windows.append((at_m[inside], height_m[inside], weight[inside], part))
-    return windows or [(at_m, height_m, weight, grid_m)]
+        return sums_of(at_m, height_m, weight, grid_m)
+    parts = []
+    for start in np.linspace(0, nodes - WINDOW_NODES, LONGEST_FIT_NODES // WINDOW_NODES):
+        part = grid_m[int(start) : int(start) + WINDOW_NODES]
+        inside = slice(*np.searchsorted(at_m, [part[0], part[-1]]))
+        if len(at_m[inside]) >= 5:
+            parts.append(sums_of(at_m[inside], height_m[inside], weight[inside], part))
+    if not parts:
+        return sums_of(at_m, height_m, weight, grid_m)
+    return Sums(
+        step_m=parts[0].step_m,
+        diagonal=np.concatenate([part.diagonal for part in parts]),
+        beside=np.concatenate([np.append(part.beside, 0.0) for part in parts])[:-1],
+        moment=np.concatenate([part.moment for part in parts]),
+        square=sum(part.square for part in parts),
+        count=sum(part.count for part in parts),
+        windows=len(parts),
+    )
 
 
-def road_heights(sums: Sums, model: HeightModel, draws: int) -> tuple[Array, Array]:
+def road_heights(
+    sums: Sums, model: HeightModel, draws: int, local: Array | None = None
+) -> tuple[Array, Array]:
     """The likeliest road at the nodes (N+1,) and random departures from it (draws, N+1).
 
     The departures have the spread that the points leave open; they are the same in every call.
+    ``local`` (N+1,) multiplies the wandering error where the land is rougher or smoother.
     """
-    bands, moment, _ = _system(sums, model)
+    bands, moment, _ = _system(sums, model, local)
     factor = cholesky_banded(bands, lower=True, check_finite=False)
     fit = cho_solve_banded((factor, True), moment, check_finite=False)
     upper = np.zeros_like(factor)

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.course.height_model import HeightModel, Prior, fit_model
-from pacing.course.height_steps import COARSE_M, Points
+from pacing.course.height_steps import COARSE_M, HAND_HELD_STEP_M, Points
 
 Array = NDArray[np.float64]
 
@@ -21,7 +21,7 @@ GRID_ERROR_M = 0.4
 CLEAN_M = 0.12
 BAROMETER_M = 0.35
 SPARSE_M = 80.0
-RECORDER_STEPS_M = (0.2, 0.480469, 0.5)
+RECORDER_STEPS_M = (0.2, HAND_HELD_STEP_M, 0.5)
 
 WHITE = Prior(HeightModel(0.3, 0.0, 15.0, 0.5), HeightModel(0.7, 0.0, 0.0, 1.5))
 FINE_GRID = Prior(HeightModel(0.3, 2.0, 15.0, 0.2), HeightModel(0.5, 1.0, 0.1, 0.7))
@@ -60,8 +60,7 @@ def judge_source(
     if held:
         return Judged(TERRAIN_GRID, grid, "", "heights repeat until the next is read")
     if not timed and step_m in RECORDER_STEPS_M:
-        sensor = "barometer" if noise < BAROMETER_M else "satellite"
-        return Judged(RECORDED, model, sensor, f"steps of {step_m:.2g} m, as recorders store")
+        return _recorded(points, grid_m, model, f"steps of {step_m:.2g} m, as recorders store")
     if not timed and _spacing_m(points) > SPARSE_M:
         return Judged(TERRAIN_GRID, grid, "", "no times, and points as far apart as a planner's")
     if wandering and not timed and model.error_m > GRID_ERROR_M:
@@ -69,9 +68,20 @@ def judge_source(
         return Judged(TERRAIN_GRID, grid, "", reason)
     if not timed and noise < CLEAN_M:
         return Judged(TERRAIN_GRID, grid, "", "no times and hardly any noise")
-    sensor = "barometer" if noise < BAROMETER_M else "satellite"
     reason = f"noise of {noise:.1f} m from point to point"
-    return Judged(RECORDED, model, sensor, f"points with times, {reason}" if timed else reason)
+    return _recorded(points, grid_m, model, f"points with times, {reason}" if timed else reason)
+
+
+def _recorded(points: Points, grid_m: Array, model: HeightModel, reason: str) -> Judged:
+    """A recorder, by its noise a barometer or a satellite receiver.
+
+    A receiver's heights wander over minutes, far longer than a grid's cells: the model with the
+    longest error follows them least.
+    """
+    noise = float(np.hypot(model.error_m, model.white_m))
+    if model.error_m > GRID_ERROR_M:
+        model = _coarse(points, grid_m)[0]
+    return Judged(RECORDED, model, "barometer" if noise < BAROMETER_M else "satellite", reason)
 
 
 def _spacing_m(points: Points) -> float:
@@ -86,13 +96,15 @@ def as_told(points: Points, grid_m: Array, source: str) -> Judged:
     white, white_cost = fit_model(*points, grid_m, WHITE)
     grid, grid_cost = likelier_grid(points, grid_m)
     model = grid if white_cost - grid_cost > CLEAR_GAIN else white
-    noise = float(np.hypot(model.error_m, model.white_m))
-    return Judged(source, model, "barometer" if noise < BAROMETER_M else "satellite", reason)
+    return _recorded(points, grid_m, model, reason)._replace(source=source)
 
 
 def likelier_grid(points: Points, grid_m: Array) -> tuple[HeightModel, float]:
     """The likelier of a fine (about 30 m) and a coarse (about 90 m) terrain grid, and its cost."""
     fine = fit_model(*points, grid_m, FINE_GRID)
-    coarse, cost = fit_model(*points, grid_m, COARSE_GRID)
-    coarse = coarse._replace(bend_pct=min(coarse.bend_pct, MOST_BEND_PCT))
-    return min(fine, (coarse, cost), key=lambda fit: fit[1])
+    return min(fine, _coarse(points, grid_m), key=lambda fit: fit[1])
+
+
+def _coarse(points: Points, grid_m: Array) -> tuple[HeightModel, float]:
+    model, cost = fit_model(*points, grid_m, COARSE_GRID)
+    return model._replace(bend_pct=min(model.bend_pct, MOST_BEND_PCT)), cost

@@ -9,8 +9,9 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
-STEPS_M = (20.0, 10.0, 5.0, 2.0, 1.0, 0.5, 0.480469, 0.2, 0.1)
-"""Usual steps; 0.48 m is that of older hand-held receivers (found in recorded files)."""
+HAND_HELD_STEP_M = 0.480469
+"""The step of older hand-held receivers, as found in recorded files."""
+STEPS_M = (20.0, 10.0, 5.0, 2.0, 1.0, 0.5, HAND_HELD_STEP_M, 0.2, 0.1)
 COARSE_M = 0.9
 SURE_SHARE = 0.05
 HELD_SHARE = 0.2
@@ -44,13 +45,15 @@ def step_of(height_m: Array) -> float | None:
     Noise of a hundredth of a step, or of the second decimal, is let pass.
     """
     rises = np.abs(np.diff(height_m))
+    repeated = float(np.mean(rises == 0)) if len(rises) else 0.0
     rises = rises[rises > 0]
-    if len(rises) == 0:
+    if len(rises) == 0 or (len(rises) < 3 and repeated < 0.8):
         return None
     for step in STEPS_M:
-        off = np.abs(rises - step * np.round(rises / step))
-        few = len(rises) < 3 and np.any(np.abs(height_m / step - np.round(height_m / step)) > 0.01)
-        if np.mean(off <= (0.006 if step == 0.480469 else 0.01 * step)) >= 0.995 and not few:
+        count = np.round(rises / step)
+        off = np.abs(rises - step * count)
+        near = off <= (0.006 if step == HAND_HELD_STEP_M else 0.01 * step)
+        if np.mean(near & (count >= 1)) >= 0.995:
             return step
     return None
 
@@ -58,11 +61,11 @@ def step_of(height_m: Array) -> float | None:
 def without_held(points: Points, step_m: float | None) -> Points:
     """One point, in the middle, for each run of equal heights, where planners held a height.
 
-    A planner that reads a terrain grid every so often repeats a height until the next one. Rounded
-    heights repeat too, but there each repetition says something: those are left as they are.
+    A planner that reads a terrain grid every so often repeats a height until the next one. Heights
+    rounded to a step repeat too, but there each repetition says something: they are left.
     """
     same = np.diff(points.height_m) == 0
-    if len(same) == 0 or np.mean(same) < HELD_SHARE or step_of(points.height_m) is not None:
+    if len(same) == 0 or np.mean(same) < HELD_SHARE or step_m is not None:
         return points
     run = np.concatenate([[0], np.cumsum(~same)])
     first = np.searchsorted(run, np.arange(run[-1] + 1))

@@ -8,45 +8,20 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.course.course import Repair
-from pacing.course.height_artefacts import (
-    STEEP,
-    STEEP_RECORDED,
-    cut_humps,
-    hump_repairs,
-)
-from pacing.course.height_error import (
-    MORE_AT_CHANGES,
-    fixed_smoothing,
-    gradients_pct,
-    halved_m,
-    lessened,
-    stated_error_pct,
-)
-from pacing.course.height_jumps import without_cliffs, without_spikes
-from pacing.course.height_model import HeightModel, fit_model, road_heights, sums_of
-from pacing.course.height_source import (
-    AT_CHANGES,
-    SOURCES_OF_HEIGHT,
-    STEPPED,
-    TERRAIN_GRID,
-    Judged,
-    as_told,
-    judge_source,
-)
-from pacing.course.height_steps import (
-    Points,
-    at_changes,
-    binned,
-    flickers,
-    step_of,
-    without_held,
-)
+from pacing.course.height_jumps import without_spikes
+from pacing.course.height_smooth import smooth_points
+from pacing.course.height_source import RECORDED, SOURCES_OF_HEIGHT
+from pacing.course.height_steps import Points, binned, step_of
 from pacing.errors import UnusableInputError
 
 Array = NDArray[np.float64]
 
 WRAP_M = 1500.0
-DRAWS = 6
+FEWEST_POINTS = 5
+FEWEST_NODES = 20
+DRIFT_TOLD_M = 2.0
+UNKNOWN_ERROR_PCT = 20.0
+"""The largest gradient error that is stated: beyond, nothing is known."""
 
 
 @dataclass(frozen=True)
@@ -78,6 +53,7 @@ def smooth_heights(
     smoothing_m: float | None = None,
     timed: bool = False,
     closed: bool = False,
+    returns: bool = False,
 ) -> HeightProfile:
     """Heights of the road at the nodes of the grid, as smooth as the data ask for.
 
@@ -85,10 +61,10 @@ def smooth_heights(
     their heights, nan where missing; ``grid`` (N+1,) uniform nodes from the first to the last
     point. ``source`` is None (judged from the heights) or one of ``recorded``, ``terrain grid``,
     ``stepped``; ``timed`` tells that the points carry time stamps; ``closed`` that the finish is
-    the start, so that heights and gradients join there. ``smoothing_m`` overrides the strength:
-    a hump of that length is halved. Missing heights are bridged; the rise from start to finish is
-    kept, heights cut or shifted by a repair apart. Raises UnusableInputError: unknown source, no
-    heights.
+    the start, passed in one direction, so that heights and gradients join there; ``returns`` that
+    it is the same place, so that the heights do. ``smoothing_m`` overrides the strength: a hump of
+    that length is halved. Missing heights are bridged; the rise from start to finish is kept.
+    Raises UnusableInputError: unknown source, no heights.
     """
     if source is not None and source not in SOURCES_OF_HEIGHT:
         raise UnusableInputError(
@@ -98,109 +74,86 @@ def smooth_heights(
     if not known.any():
         raise UnusableInputError("no heights at all", key="course.heights")
     at, height = distance_m[known], elevation_m[known]
-    net = 0.0 if closed else float(height[-1] - height[0])
-    first = float(height[0] + height[-1]) / 2 if closed else float(height[0])
-    step = step_of(height)
+    drift: tuple[Repair, ...] = ()
+    if closed or returns:
+        height, drift = _brought_level(at, height)
+    step = step_of(elevation_m[known])
     points, spikes = without_spikes(binned(at, height), step)
-    nodes, points = _wrapped(points, grid) if closed else (grid, points)
-    smooth = _smooth(points, nodes, step=step, told=source, smoothing_m=smoothing_m, timed=timed)
-    inside = slice(None) if len(nodes) == len(grid) else slice((len(nodes) - len(grid)) // 2, None)
-    road = smooth.road[inside][: len(grid)]
-    share = (grid - grid[0]) / (grid[-1] - grid[0])
-    road = road + (first - road[0]) + (net - (road[-1] - road[0])) * share
+    if len(points.at_m) < FEWEST_POINTS or len(grid) < 3 or np.ptp(points.height_m) == 0:
+        return _unsmoothed(points, grid, source, (*drift, *spikes))
+    around = closed and len(grid) >= FEWEST_NODES
+    extra, wrapped = _wrapped(points, grid) if around else (0, points)
+    nodes = grid[0] + (grid[-1] - grid[0]) / (len(grid) - 1) * np.arange(-extra, len(grid) + extra)
+    smooth = smooth_points(
+        wrapped, nodes, step_m=step, told=source, smoothing_m=smoothing_m, timed=timed
+    )
     return HeightProfile(
         distance_m=grid,
-        elevation_m=road,
+        elevation_m=_through_the_ends(
+            smooth.road_m[extra : extra + len(grid)], grid, at, height, smooth.noise_m
+        ),
         source=smooth.judged.source,
         noise_m=smooth.noise_m,
-        gradient_error_pct=smooth.gradient_error_pct,
+        gradient_error_pct=min(smooth.gradient_error_pct, UNKNOWN_ERROR_PCT),
         smoothing_m=smooth.smoothing_m,
-        repairs=(*spikes, *_within(smooth.repairs, grid)),
+        repairs=(*drift, *spikes, *_within(smooth.repairs, grid)),
         sensor=smooth.judged.sensor,
         reason=smooth.judged.reason,
     )
 
 
-@dataclass(frozen=True)
-class _Smooth:
-    road: Array
-    judged: Judged
-    noise_m: float
-    gradient_error_pct: float
-    smoothing_m: float
-    repairs: tuple[Repair, ...]
-
-
-def _smooth(
-    points: Points,
-    nodes: Array,
-    *,
-    step: float | None,
-    told: str | None,
-    smoothing_m: float | None,
-    timed: bool,
-) -> _Smooth:
-    """Cut, judge, weigh and smooth."""
-    read = without_held(points, step)
-    held = len(read.at_m) < len(points.at_m)
-    points = read
-    keep, cuts = cut_humps(points, nodes, STEEP)
-    kept = points.chosen(keep)
-    if told is None:
-        judged = judge_source(kept, nodes, step_m=step, held=held, timed=timed)
-    else:
-        judged = as_told(kept, nodes, told)
-    cliffs: list[Repair] = []
-    if judged.source != TERRAIN_GRID:
-        points, cliffs = without_cliffs(points, step)
-        keep, cuts = cut_humps(points, nodes, STEEP_RECORDED)
-        if judged.source == STEPPED:
-            keep, cuts = np.ones_like(keep), []
-        kept = points.chosen(keep)
-        if cliffs:
-            judged = judged._replace(model=as_told(kept, nodes, judged.source).model)
-    model, share = judged.model, 1.0
-    if judged.source == STEPPED and ((step or 1.0) >= 5 or not flickers(kept)):
-        kept, model = _between_steps(kept, nodes, step or 1.0)
-        share = MORE_AT_CHANGES
-    sums = sums_of(*kept, nodes)
-    likeliest, departures = road_heights(sums, model, DRAWS)
-    error = share * stated_error_pct(likeliest, departures, model, judged, sums.step_m)
-    if smoothing_m is None:
-        road, _ = road_heights(sums, lessened(model, judged.source), 0)
-        spacing = float(nodes[-1] - nodes[0]) / max(len(kept.at_m), 1)
-        smoothing_m = halved_m(model, spacing, sums.step_m)
-    else:
-        road = fixed_smoothing(sums, smoothing_m)
-        away = gradients_pct(road - likeliest, sums.step_m)
-        error = float(np.hypot(error, np.sqrt(np.mean(away**2))))
-    return _Smooth(
-        road=road,
-        judged=judged,
-        noise_m=float(np.hypot(model.error_m, model.white_m)),
-        gradient_error_pct=error,
-        smoothing_m=smoothing_m,
-        repairs=(*cliffs, *hump_repairs(cuts)),
+def _unsmoothed(
+    points: Points, grid: Array, source: str | None, repairs: tuple[Repair, ...]
+) -> HeightProfile:
+    """Straight lines between the points: too few to smooth, or all of one height."""
+    level = float(np.ptp(points.height_m)) == 0 and len(points.at_m) >= FEWEST_POINTS
+    return HeightProfile(
+        distance_m=grid,
+        elevation_m=np.interp(grid, points.at_m, points.height_m),
+        source=source or RECORDED,
+        noise_m=0.0,
+        gradient_error_pct=0.0 if level else UNKNOWN_ERROR_PCT,
+        smoothing_m=0.0,
+        repairs=repairs,
+        reason="one height everywhere" if level else "too few heights to judge",
     )
 
 
-def _between_steps(points: Points, nodes: Array, step_m: float) -> tuple[Points, HeightModel]:
-    points = at_changes(points, step_m)
-    prior = AT_CHANGES._replace(median=AT_CHANGES.median._replace(white_m=step_m))
-    return points, fit_model(*points, nodes, prior)[0]
+def _brought_level(at: Array, height: Array) -> tuple[Array, tuple[Repair, ...]]:
+    """Heights (M,) with the difference between the two ends, which are one place, spread evenly."""
+    drift = float(height[-1] - height[0])
+    length = max(float(at[-1] - at[0]), 1e-9)
+    level = height - drift * ((at - at[0]) / length - 0.5)
+    if abs(drift) < DRIFT_TOLD_M:
+        return level, ()
+    amount = f"{drift:+.0f} m at the finish, spread over the course"
+    ends_km = float(at[0]) / 1000, float(at[-1]) / 1000
+    return level, (Repair("start and finish brought to one height", *ends_km, amount),)
 
 
-def _wrapped(points: Points, grid: Array) -> tuple[Array, Points]:
-    """A closed course with some of its end before its start and some of its start after its end."""
+def _wrapped(points: Points, grid: Array) -> tuple[int, Points]:
+    """A closed course with some of its end before its start and some of its start after its end.
+
+    Returns how many nodes that takes on either side, and the points.
+    """
     length = float(grid[-1] - grid[0])
     cell = length / (len(grid) - 1)
-    count = min(int(WRAP_M / cell), len(grid) - 2)
-    nodes = np.concatenate([grid[-1 - count : -1] - length, grid, grid[1 : 1 + count] + length])
-    drift = points.height_m[-1] - points.height_m[0]
-    level = points.height_m - drift * (points.at_m - grid[0]) / length
+    extra = min(int(WRAP_M / cell), len(grid) - 2)
     at = np.concatenate([points.at_m - length, points.at_m, points.at_m + length])
-    inside = (at >= nodes[0]) & (at <= nodes[-1])
-    return nodes, Points(at[inside], np.tile(level, 3)[inside], np.tile(points.weight, 3)[inside])
+    inside = (at >= grid[0] - extra * cell) & (at <= grid[-1] + extra * cell)
+    tiled = Points(at, np.tile(points.height_m, 3), np.tile(points.weight, 3))
+    return extra, tiled.chosen(inside)
+
+
+def _through_the_ends(road: Array, grid: Array, at: Array, height: Array, noise_m: float) -> Array:
+    """The road, tilted a little so that it rises from start to finish as the heights do.
+
+    An end that lies far off the road is an outlier and is not followed.
+    """
+    off = height[[0, -1]] - np.interp(at[[0, -1]], grid, road)
+    off = np.where(np.abs(off) <= 4 * noise_m + 1.0, off, 0.0)
+    length = max(float(at[-1] - at[0]), 1e-9)
+    return np.asarray(road + off[0] + (off[1] - off[0]) * (grid - at[0]) / length)
 
 
 def _within(repairs: tuple[Repair, ...], grid: Array) -> tuple[Repair, ...]:
