@@ -237,3 +237,25 @@ def make_race() -> Callable[..., Any]:
         return build(table, Origins(), file=Path("invented.toml"), course=course)
 
     return race
+
+
+@pytest.fixture(scope="session")
+def mean_power_law() -> Any:
+    """A law that pays back every watt below critical power: what is left tells mean power."""
+    from pacing.rider.recovery import Advance, RecoveryLaw
+
+    class Ledger(RecoveryLaw):
+        name = "ledger"
+        pool_shares = (1.0,)
+
+        def advance(self, pools: Any, excess_w: Any, duration_s: Any, **_: Any) -> Any:
+            return (pools[0] - excess_w * duration_s,)
+
+        def advance_and_slopes(self, pools: Any, excess_w: Any, duration_s: Any, **_: Any) -> Any:
+            after = self.advance(pools, excess_w, duration_s)
+            return Advance(after, ((1.0,),), (-duration_s,), (-excess_w,))
+
+        def advance_many(self, pools: Any, excess_w: Any, duration_s: Any, **_: Any) -> Any:
+            return pools - excess_w * duration_s
+
+    return Ledger()
