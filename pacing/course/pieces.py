@@ -105,10 +105,8 @@ def _places(sums: _Sums, most: int) -> Index:
         apart = sums.misfit(nodes[:-1], nodes[1:])
         together = sums.misfit(nodes[:-2], nodes[2:])
         price = together - apart[:-1] - apart[1:]
-        # Length breaks ties, so that a constant load is thinned evenly and not from one end.
-        price = price + 1e-12 * (sums.square[-1] + 1e-300) * (
-            (sums.length[nodes[2:]] - sums.length[nodes[:-2]]) / sums.length[-1]
-        )
+        # Of equals every other one goes, so that a constant load is thinned evenly and at once.
+        price = price + 1e-12 * (price.max() + 1e-30) * (np.arange(price.size) % 2)
         walled = np.concatenate(([np.inf], price, [np.inf]))
         lowest = np.flatnonzero((price < walled[:-2]) & (price <= walled[2:]))
         surplus = nodes.size - 1 - most
@@ -140,7 +138,7 @@ def _best_cuts(sums: _Sums, places: Index, most_pieces: int, shortest_m: float) 
     best = misfit[:, 0].copy()
     totals = [best[-1]]
     before: list[Index] = []
-    blocks = np.array_split(np.arange(n + 1), 8)
+    blocks = np.array_split(np.arange(n + 1), min(8, n + 1))
     for _ in range(2, min(most_pieces, n) + 1):
         origin = np.zeros(n + 1, dtype=np.intp)
         following = np.full(n + 1, np.inf)
