@@ -66,8 +66,15 @@ class Motion:
 
     @property
     def stalled_cells(self) -> NDArray[np.intp]:
-        """Cells the rider cannot get through upright."""
-        return np.flatnonzero(self.mode == Mode.FLOOR)
+        """Cells the rider cannot get through upright: two or more in a row at the floor.
+
+        One by itself is the first cell of a wall, which the trapezoid overshoots.
+        """
+        floor = self.mode == Mode.FLOOR
+        beside = np.zeros_like(floor)
+        beside[1:] |= floor[:-1]
+        beside[:-1] |= floor[1:]
+        return np.flatnonzero(floor & (beside | (floor.size == 1)))
 
 
 @dataclass(frozen=True)

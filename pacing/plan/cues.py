@@ -1,18 +1,84 @@
-"""From optimal pieces to cues: boundaries moved to where a rider can see or read them."""
+"""From optimal pieces to cues: boundaries where a rider can see or read them, printed powers."""
 
 from __future__ import annotations
+
+from dataclasses import replace
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
-from pacing.plan.marginal import Marginal
-from pacing.plan.problem import Cuts
-from pacing.plan.solve import Solution
+from pacing.plan.marginal import Marginal, marginal
+from pacing.plan.places import places_of, readable_nodes
+from pacing.plan.problem import Cuts, Ride, ride
+from pacing.plan.refine import merged_to
+from pacing.plan.rounding import long_pieces, rounded, split_for_steps
+from pacing.plan.solve import Solution, solve
+from pacing.race import Race
 
 Array = NDArray[np.float64]
 
 REACH_M = 160.0
 """How far a boundary may be moved to a readable place."""
+SHORTEST_SLACK = 1.02
+"""Cues are placed a little longer than they need be: rounding changes their times."""
+
+
+class Printed(NamedTuple):
+    """The cues ridden as printed, and the time they took before their powers were rounded."""
+
+    ride: Ride
+    placed_time_s: float
+
+
+def print_cues(race: Race, solution: Solution) -> Printed:
+    """Cues as printed, from the optimal pieces.
+
+    Where pieces are so long that a step of power is much of W′, some cues may be better spent
+    on changing between two steps; both ways are tried.
+    """
+    step_w = race.plan.power_step_w * race.rider.power_meter_factor
+    ways = [_printed(race, solution, step_w)]
+    long = int(np.sum(long_pieces(solution.ride, step_w=step_w)))
+    most = race.plan.max_cues - min(long, race.plan.max_cues // 2)
+    if long and solution.ride.starts.size > most:
+        ways.append(_printed(race, merged_to(solution, most), step_w))
+    return min(ways, key=lambda way: way.ride.motion.total_s)
+
+
+def _printed(race: Race, solution: Solution, step_w: float) -> Printed:
+    """Place the boundaries, solve again, round together."""
+    readable = readable_nodes(race.course, places_of(race.course))
+    shortest = SHORTEST_SLACK * race.plan.shortest_cue_s
+    starts = placed(solution, marginal(solution), readable, shortest_s=shortest)
+    ridden = solution.ride
+    again = solve(ridden.problem, starts, ridden.power_w, guess_m_s=ridden.motion.speed_m_s)
+    cut = split_for_steps(again.ride, readable, step_w=step_w, shortest_s=shortest)
+    if starts.size < cut.size <= race.plan.max_cues:
+        again = _cut_at(again, cut)
+    return Printed(_merged(rounded(again, step_w=step_w)), again.ride.motion.total_s)
+
+
+def _cut_at(solution: Solution, starts: Cuts) -> Solution:
+    """The same ride with more pieces."""
+    ridden = solution.ride
+    power = ridden.target_w[starts]
+    return replace(
+        solution, ride=ride(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
+    )
+
+
+def _merged(ridden: Ride) -> Ride:
+    """Neighbouring cues of the same power and position as one."""
+    position = ridden.problem.road.position[ridden.starts]
+    new = np.ones(ridden.starts.size, dtype=bool)
+    new[1:] = (np.diff(ridden.power_w) != 0.0) | (np.diff(position) != 0)
+    return ride(
+        ridden.problem,
+        ridden.starts[new],
+        ridden.power_w[new],
+        guess_m_s=ridden.motion.speed_m_s,
+    )
 
 
 def placed(solution: Solution, value: Marginal, readable: Cuts, *, shortest_s: float) -> Cuts:

@@ -36,9 +36,7 @@ class Cut(NamedTuple):
     power_w: Array
 
 
-def cheapest_cuts(
-    priced: Priced, *, most_pieces: int, shortest_s: float, levels_w: Array
-) -> Cut:
+def cheapest_cuts(priced: Priced, *, most_pieces: int, shortest_s: float, levels_w: Array) -> Cut:
     """At most ``most_pieces`` pieces of one power each, none shorter than ``shortest_s``.
 
     Least total price by dynamic programming over places where a cut may fall: where the free

@@ -13,8 +13,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.motion.road import Road
+from pacing.plan.approach import freewheeling_in
+from pacing.plan.cut import Priced
 from pacing.plan.interior_point import Found, Terms, minimise
 from pacing.plan.problem import Cuts, Problem, Ride, ride
+from pacing.plan.solve import spare_j
 
 Array = NDArray[np.float64]
 
@@ -22,9 +25,10 @@ ENERGY_UNIT, WORK_UNIT_J, POWER_UNIT_W, FORCE_UNIT_N = 50.0, 1000.0, 100.0, 100.
 LEAST_DEFICIT_W = 0.05
 CAP_SHARPNESS = 8.0
 IDLE_PRICE = 1e-3
-"""Seconds a second at 100 W below critical power costs extra, so that u and q are not both positive."""
+"""Seconds that a second at 100 W below critical power costs extra: keeps u or q at zero."""
 COARSEST_M = 30.0
-BARRIER = 0.1
+BARRIER = 1.0
+AT_CRITICAL = 0.03
 
 
 @dataclass(frozen=True)
@@ -141,11 +145,16 @@ class _Stages:
         cell = self.blocks.road.cell_m
         power = self.cp + local[:, self.i_u] - local[:, self.i_q]
         scale = self.mass * ENERGY_UNIT
-        motion = local[:, self.i_e1] - local[:, self.i_e0] + (
-            0.5 * cell * resistance
-            + cell * FORCE_UNIT_N * local[:, self.i_b]
-            - self.drive * power * time
-        ) / scale
+        motion = (
+            local[:, self.i_e1]
+            - local[:, self.i_e0]
+            + (
+                0.5 * cell * resistance
+                + cell * FORCE_UNIT_N * local[:, self.i_b]
+                - self.drive * power * time
+            )
+            / scale
+        )
         owed = local[:, self.i_x1] - local[:, self.i_x0] - time[:, None] * flow
         return np.concatenate([motion[:, None], owed], axis=1)
 
@@ -335,10 +344,11 @@ def _both(curve: Array, i: int, j: int, value: Array) -> None:
 
 @dataclass(frozen=True)
 class FreeRide:
-    """The fine solve's ride, ridden by the simulator with the reserve kept."""
+    """The fine solve's ride, ridden by the simulator, and what departing from it costs."""
 
     ride: Ride
     found: Found
+    priced: Priced
 
 
 def ride_free(problem: Problem, start: Ride) -> FreeRide:
@@ -349,10 +359,44 @@ def ride_free(problem: Problem, start: Ride) -> FreeRide:
     found = minimise(stages, state, control, barrier=BARRIER)
     power = (stages.cp + found.control[:, 0] - found.control[:, 1]) * POWER_UNIT_W
     power = np.clip(power * blocks.power_share, problem.min_power_w, blocks.most_w)
-    return FreeRide(_kept_to_reserve(problem, blocks.first, power), found)
+    ridden = _kept_to_reserve(problem, blocks.first, power)
+    return FreeRide(ridden, found, _priced(ridden, found))
 
 
 def _kept_to_reserve(problem: Problem, first: Cuts, power: Array) -> Ride:
-    """Lower what is above critical power by as little as keeps the reserve."""
+    """Lower the power by as little as keeps the reserve."""
     ridden = ride(problem, first, power)
+    low, high = 0.0, 0.5
+    if spare_j(ridden) >= 0.0:
+        return ridden
+    critical = problem.at_critical_w[first]
+    for _ in range(14):
+        middle = 0.5 * (low + high)
+        lowered = np.where(power > critical, critical + (1.0 - middle) * (power - critical), power)
+        trial = ride(problem, first, lowered, guess_m_s=ridden.motion.speed_m_s)
+        if spare_j(trial) >= 0.0:
+            high, ridden = middle, trial
+        else:
+            low = middle
     return ridden
+
+
+def _priced(ridden: Ride, found: Found) -> Priced:
+    """One-sided prices of power in every cell, from the multipliers of its bounds."""
+    cells = np.diff(np.append(ridden.starts, ridden.problem.cells))
+    u, q, price = found.control[:, 0], found.control[:, 1], found.spare_price
+    by_u = (price[:, 0] - price[:, 1]) / POWER_UNIT_W
+    by_q = (price[:, 2] - price[:, 3]) / POWER_UNIT_W
+    critical = (u < AT_CRITICAL) & (q < AT_CRITICAL)
+    more = np.maximum(np.where(critical | (u > q), by_u, -by_q), 0.0)
+    less = np.maximum(np.where(critical | (u <= q), by_q, -by_u), 0.0)
+    time = ridden.motion.time_s
+    held = ridden.motion.power_w < ridden.target_w - 1.0
+    held |= freewheeling_in(ridden)
+    return Priced(
+        power_w=ridden.target_w,
+        more_s_per_w=np.where(held, 0.0, np.repeat(more / cells, cells)),
+        less_s_per_w=np.where(held, 0.0, np.repeat(less / cells, cells)),
+        bend_s_per_w2=np.where(held, 0.0, time / (3.0 * np.mean(ridden.target_w) ** 2)),
+        time_s=time,
+    )

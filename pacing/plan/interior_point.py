@@ -19,7 +19,7 @@ from scipy.linalg import LinAlgError, solve_banded
 
 Array = NDArray[np.float64]
 
-MOST_ITERATIONS = 150
+MOST_ITERATIONS = 60
 BOUNDARY = 0.995
 DUAL_REGULARISATION = 1e-9
 LEAST_DAMPING = 1e-3
@@ -57,10 +57,11 @@ class Staged(Protocol):
 
 @dataclass(frozen=True)
 class Found:
-    """The point reached: states (n + 1, e), controls (n, c), and how good it is."""
+    """The point reached: states (n + 1, e), controls (n, c), prices (n, g), how good it is."""
 
     state: Array
     control: Array
+    spare_price: Array
     cost: float
     error: float
     iterations: int
@@ -100,7 +101,8 @@ def minimise(
         complementary = _largest(point.slack * point.spare_price)
         error = max(_largest(stationarity), infeasible, complementary)
         if error < tolerance:
-            return Found(point.state, point.control, float(terms.cost.sum()), error, iteration, True)
+            cost = float(terms.cost.sum())
+            return _found(point, cost, error, iteration, True)
         inner = max(
             _largest(stationarity), infeasible, _largest(point.slack * point.spare_price - barrier)
         )
@@ -114,7 +116,11 @@ def minimise(
         elif taken > 0.7:
             damping = 0.3 * damping if damping > LEAST_DAMPING else 0.0
     cost, _, _ = problem.values(point.local())
-    return Found(point.state, point.control, float(cost.sum()), error, MOST_ITERATIONS, False)
+    return _found(point, float(cost.sum()), error, MOST_ITERATIONS, False)
+
+
+def _found(point: _Point, cost: float, error: float, iterations: int, converged: bool) -> Found:
+    return Found(point.state, point.control, point.spare_price, cost, error, iterations, converged)
 
 
 def _largest(values: Array) -> float:
@@ -175,9 +181,7 @@ def _solve_stages(curved: Array, slope: Array, terms: Terms) -> tuple[Array, Arr
     np.linalg.cholesky(y_block)  # raises where the controls' curvature is not positive
     coupling = curved[:, inner[:, None], outer]
     a_y, a_s = terms.equation_slope[:, :, inner], terms.equation_slope[:, :, outer]
-    right = np.concatenate(
-        [coupling, a_y.transpose(0, 2, 1), slope[:, inner, None]], axis=2
-    )
+    right = np.concatenate([coupling, a_y.transpose(0, 2, 1), slope[:, inner, None]], axis=2)
     solved = np.linalg.solve(y_block, right)
     by_s, by_price, by_one = solved[:, :, : 2 * e], solved[:, :, 2 * e : 3 * e], solved[:, :, -1]
     # y = −by_s s + by_price λ − by_one
@@ -197,21 +201,21 @@ def _solve_stages(curved: Array, slope: Array, terms: Terms) -> tuple[Array, Arr
     _put(band, half, size, 0, 0, np.concatenate([price_block, a_eff[:, :, e:]], axis=2))
     after = s_block[:, e:, e:].copy()
     after[:-1] += s_block[1:, :e, :e]
-    _put(band, half, size, e, 0, np.concatenate([-a_eff[:, :, e:].transpose(0, 2, 1), after], axis=2))
+    _put(
+        band, half, size, e, 0, np.concatenate([-a_eff[:, :, e:].transpose(0, 2, 1), after], axis=2)
+    )
     # to the stage before: equation i on s_i, and the curvature between s_i and s_(i+1)
     _put(band, half, size, 0, -e, a_eff[1:, :, :e], first=1)
     _put(band, half, size, e, -e, s_block[1:, e:, :e], first=1)
     # to the stage after
     _put(band, half, size, e, size, -a_eff[1:, :, :e].transpose(0, 2, 1), first=0)
     _put(band, half, size, e, size + e, s_block[1:, :e, e:], first=0)
-    x = solve_banded((half, half), band, rhs.ravel(), check_finite=False, overwrite_ab=True)
-    x = x.reshape(count, size)
+    flat = solve_banded((half, half), band, rhs.ravel(), check_finite=False, overwrite_ab=True)
+    x = np.asarray(flat).reshape(count, size)
     price, states = x[:, :e], np.concatenate([np.zeros((1, e)), x[:, e:]])
     around = np.concatenate([states[:-1], states[1:]], axis=1)
     control = (
-        -np.einsum("nyo,no->ny", by_s, around)
-        + np.einsum("nye,ne->ny", by_price, price)
-        - by_one
+        -np.einsum("nyo,no->ny", by_s, around) + np.einsum("nye,ne->ny", by_price, price) - by_one
     )
     return states, control, price
 
@@ -236,7 +240,10 @@ def _advance(
     missing = np.abs(terms.equation).sum() + np.abs(terms.spare - point.slack).sum()
     before = terms.cost.sum() - barrier * np.log(point.slack).sum() + merit_price * missing
     slope = float(
-        np.sum(terms.cost_slope * np.concatenate([step.state[:-1], step.control, step.state[1:]], axis=1))
+        np.sum(
+            terms.cost_slope
+            * np.concatenate([step.state[:-1], step.control, step.state[1:]], axis=1)
+        )
         - barrier * np.sum(step.slack / point.slack)
         - merit_price * missing
     )
@@ -253,7 +260,9 @@ def _advance(
             cost, equation, spare = problem.values(trial.local())
             missing = np.abs(equation).sum() + np.abs(spare - trial.slack).sum()
             after = cost.sum() - barrier * np.log(trial.slack).sum() + merit_price * missing
-        if np.isfinite(after) and after <= before + 1e-4 * size * min(slope, 0.0) + 1e-10 * abs(before):
+        if np.isfinite(after) and after <= before + 1e-4 * size * min(slope, 0.0) + 1e-10 * abs(
+            before
+        ):
             break
         size *= 0.5
     point.state, point.control, point.slack = trial.state, trial.control, trial.slack

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from pacing.plan.balance import run_slopes, starting_pools
 from pacing.plan.marginal import curvature
 from pacing.plan.problem import Cuts, Ride, ride
-from pacing.plan.solve import Solution, power_bounds_w
+from pacing.plan.solve import Solution, power_bounds_w, spare_j
 
 Array = NDArray[np.float64]
 
@@ -55,11 +55,11 @@ def long_pieces(ridden: Ride, *, step_w: float) -> NDArray[np.bool_]:
     return ridden.piece_time_s * step_w > LONG_SHARE * usable_j
 
 
-def split_for_steps(ridden: Ride, readable: Cuts, *, step_w: float) -> Cuts:
+def split_for_steps(ridden: Ride, readable: Cuts, *, step_w: float, shortest_s: float) -> Cuts:
     """Cut long pieces in two so that the steps above and below make up the power between them.
 
     The higher step comes first where most of W′ is left at the piece's start, else last.
-    ``readable`` are the nodes at which a cue may begin.
+    ``readable`` are the nodes at which a cue may begin; no part is shorter than ``shortest_s``.
     """
     problem = ridden.problem
     elapsed, starts = ridden.motion.elapsed_s, ridden.starts
@@ -69,18 +69,15 @@ def split_for_steps(ridden: Ride, readable: Cuts, *, step_w: float) -> Cuts:
         above = ridden.power_w[k] / step_w % 1.0
         left = (ridden.balance_j[starts[k]] - problem.reserve_j) / max(problem.w_prime_j, 1.0)
         share = above if left > 0.5 else 1.0 - above
-        inside = readable[(readable > starts[k]) & (readable < ends[k])]
+        inside = readable[
+            (elapsed[readable] - elapsed[starts[k]] >= shortest_s)
+            & (elapsed[ends[k]] - elapsed[readable] >= shortest_s)
+        ]
         if not 0.1 < share < 0.9 or inside.size == 0:
             continue
         wanted = elapsed[starts[k]] + share * (elapsed[ends[k]] - elapsed[starts[k]])
         added.append(int(inside[np.argmin(np.abs(elapsed[inside] - wanted))]))
     return np.union1d(starts, np.array(added, dtype=np.intp))
-
-
-def spare_j(ridden: Ride) -> float:
-    """W′ over the reserve, by every cell: at its lowest, or at the finish alone."""
-    left = ridden.balance_j[1:] if ridden.problem.reserve_everywhere else ridden.balance_j[-1:]
-    return float(np.min(left) - ridden.problem.reserve_j)
 
 
 @dataclass(frozen=True)
@@ -109,6 +106,8 @@ class _Model:
         self.time_slope = ridden.time_slopes
         self.runs = ridden.runs
         share = self.problem.power_share
+        self.share = share[ridden.starts]
+        self.critical_w = self.problem.critical_power_w[ridden.starts]
         self.change = run_slopes(self.runs, ridden.slopes, power_share=share)
         self.from_before = np.append(0.0, np.diag(ridden.slopes.entry_energy, -1))
         self.first_run = np.searchsorted(self.runs.piece, np.arange(self.centre_w.size + 1))
@@ -151,7 +150,13 @@ class _Model:
         if not problem.reserve_everywhere:
             last = piece == self.centre_w.size - 1
             least = pools.sum(axis=0) if last else np.full(step.size, np.inf)
-        spare = least - problem.reserve_j - keep_j
+        spare = least - problem.reserve_j
+        if problem.peak_power_w is not None:
+            critical, share = self.critical_w[piece], self.share[piece]
+            per_joule = (problem.peak_power_w - critical) / problem.w_prime_j
+            needed = ((self.centre_w[piece] + step) / share - critical) / per_joule
+            spare = np.minimum(spare, least - needed)
+        spare = spare - keep_j
         every = _Kept(cost, pools, step, before)
         holds = np.flatnonzero(spare >= 0.0)
         return every.chosen(holds if holds.size else np.array([int(np.argmax(spare))]))
@@ -182,8 +187,7 @@ def _stepped_down(ridden: Ride, low: Array, step_w: float) -> Ride:
     while spare_j(ridden) < 0.0:
         last = ridden.starts.size - 1
         if problem.reserve_everywhere:
-            worst = int(np.argmin(ridden.balance_j[1:]))
-            last = int(np.searchsorted(ridden.starts, worst, side="right")) - 1
+            last = int(np.argmin(ridden.lowest.lowest_j))
         power = ridden.power_w.copy()
         above = np.flatnonzero(power[: last + 1] > low[: last + 1])
         if above.size == 0:

@@ -20,6 +20,8 @@ CROSSING_W = 1e-3
 LEAST_CROSSING_GAIN_S = 1e-3
 TIME_TOLERANCE_S = 1e-5
 JOULES_PER_UNIT = 1000.0
+FIRST_S = 30.0
+"""The start, over which power has a cap of its own."""
 EVENNESS = 0.05
 
 
@@ -73,12 +75,14 @@ def power_bounds_w(problem: Problem, ridden: Ride) -> tuple[Array, Array]:
     starts = ridden.starts
     low = np.full(starts.size, problem.min_power_w)
     high = np.full(starts.size, problem.max_power_w)
-    early = ridden.motion.elapsed_s[starts] < 30.0
+    early = ridden.motion.elapsed_s[starts] < FIRST_S
     high[early] = np.minimum(high[early], problem.first_30_s_max_w)
     return low, np.maximum(low, high)
 
 
-def _held_to_sides(low: Array, high: Array, at_critical: Array, above: Array) -> _Bounds:
+def _held_to_sides(
+    low: Array, high: Array, at_critical: Array, above: NDArray[np.bool_]
+) -> _Bounds:
     """Bounds (n,) that keep each power on its side of critical power.
 
     At critical power spending turns into recovering and the slopes of W′ jump. On either side
@@ -168,7 +172,7 @@ def solve(
 
 
 def _pays_to_cross(
-    solution: Solution, at_critical: Array, above: Array, evenness: float
+    solution: Solution, at_critical: Array, above: NDArray[np.bool_], evenness: float
 ) -> NDArray[np.bool_]:
     """Pieces (n,) held at critical power for which the other side is better."""
     ridden = solution.ride
@@ -278,23 +282,30 @@ def _kkt_residual(slope: Array, *, at_low: NDArray[np.bool_], at_high: NDArray[n
 def best_constant(problem: Problem) -> Ride:
     """The highest constant target that keeps the reserve under the same limits.
 
+    The first 30 s keep their own cap, so the ride may have two pieces; the last is the target.
+
     Raises
     ------
     CannotBeRiddenError
         If no constant target within the bounds keeps it.
     """
-    start = np.zeros(1, dtype=np.intp)
-    memory: dict[str, Ride] = {}
+    capped_w = min(problem.first_30_s_max_w, problem.max_power_w)
+    start = ride(problem, np.zeros(1, dtype=np.intp), np.array([capped_w]))
+    early = int(np.searchsorted(start.motion.elapsed_s, FIRST_S))
+    starts = np.array([0, early] if early < problem.cells else [0], dtype=np.intp)
+    last = start
 
     def margin(power: float) -> float:
-        guess = memory["last"].motion.speed_m_s if memory else None
-        memory["last"] = ride(problem, start, np.array([power]), guess_m_s=guess)
-        return float(np.min(margins_j(memory["last"])))
+        nonlocal last
+        targets = np.array([min(power, capped_w), power])[2 - starts.size :]
+        targets = np.minimum(targets, [capped_w, np.inf][: starts.size])
+        last = ride(problem, starts, targets, guess_m_s=last.motion.speed_m_s)
+        return spare_j(last)
 
     never_spends = float(np.min(problem.at_critical_w))
     low = max(problem.min_power_w, min(never_spends, problem.max_power_w))
     if margin(problem.max_power_w) >= 0.0:
-        return memory["last"]
+        return last
     if margin(low) < 0.0:
         raise CannotBeRiddenError(
             f"The reserve of {problem.reserve_j / 1000:.1f} kJ cannot be kept even at the lowest "
@@ -303,4 +314,16 @@ def best_constant(problem: Problem) -> Ride:
     power = float(brentq(margin, low, problem.max_power_w, xtol=1e-4))
     while margin(power) < 0.0:
         power -= 1e-4
-    return memory["last"]
+    return last
+
+
+def spare_j(ridden: Ride) -> float:
+    """W′ over what has to be kept: the reserve, and what the power limit that falls with W′ asks.
+
+    Negative where the ride may not be ridden.
+    """
+    spare = float(np.min(margins_j(ridden)))
+    if ridden.problem.peak_power_w is not None:
+        _, _, per_joule = _peak_terms(ridden)
+        spare = min(spare, float(np.min(_peak_margins_w(ridden) / per_joule)))
+    return spare

@@ -1,0 +1,158 @@
+"""The optimum of a race: fine solve, pieces cut by its prices, SLSQP over their powers."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from time import perf_counter
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pacing.course.pieces import cut_pieces
+from pacing.plan.approach import with_approaches
+from pacing.plan.cut import Cut, cheapest_cuts
+from pacing.plan.free import FreeRide, ride_free
+from pacing.plan.prepare import Prepared, prepare, settled
+from pacing.plan.problem import Problem, Ride
+from pacing.plan.refine import refined
+from pacing.plan.replay import refuse_stall
+from pacing.plan.solve import Solution, solve
+from pacing.race import Race
+
+Array = NDArray[np.float64]
+
+SHORTEST_SLACK = 1.06
+"""Pieces are cut a little longer than cues need be, so that there is room to move them."""
+LEVEL_W = 10.0
+MOST_SETTLINGS = 4
+
+
+@dataclass(frozen=True)
+class Optimum:
+    """The best pieces found, and the free ride they are measured against.
+
+    ``free`` is the better of the fine solves from two starts, a local optimum; ``free_times_s``
+    are both, ``free_seconds`` the wall time they took. ``evenness_s`` is what breaking near-ties
+    towards even power costs.
+    """
+
+    prepared: Prepared
+    solution: Solution
+    free: Ride
+    free_times_s: tuple[float, ...]
+    solves: int
+    iterations: int
+    evaluations: int
+    free_seconds: float
+    evenness_s: float
+
+
+class _Counts:
+    """What the solves took together."""
+
+    def __init__(self) -> None:
+        self.solves = self.iterations = self.evaluations = 0
+        self.free_seconds = 0.0
+
+    def solve(self, problem: Problem, cut: Cut, guess_m_s: Array) -> Solution:
+        return self.counted(solve(problem, cut.starts, cut.power_w, guess_m_s=guess_m_s))
+
+    def counted(self, solution: Solution) -> Solution:
+        self.solves += 1
+        self.iterations += solution.iterations
+        self.evaluations += solution.evaluations
+        return solution
+
+    def ride_free(self, problem: Problem, start: Ride) -> FreeRide:
+        began = perf_counter()
+        free = ride_free(problem, start)
+        self.free_seconds += perf_counter() - began
+        return free
+
+
+def optimise(race: Race) -> Optimum:
+    """Find the pieces and powers of least time for ``race``.
+
+    Raises CannotBeRiddenError if the rider stalls or the reserve cannot be kept.
+    """
+    counts = _Counts()
+    prepared = prepare(race)
+    refuse_stall(prepared.constant)
+    first = counts.ride_free(prepared.problem, prepared.constant)
+    prepared = settled(prepared, first.ride)
+    solution = _pieces(prepared, first, counts)
+    for _ in range(MOST_SETTLINGS):
+        again = settled(prepared, solution.ride)
+        if again is prepared:
+            break
+        prepared = again
+        problem = with_approaches(prepared.problem, first.ride)
+        cut = Cut(solution.ride.starts, solution.ride.power_w)
+        solution = counts.solve(problem, cut, solution.ride.motion.speed_m_s)
+    refuse_stall(solution.ride)
+    cut = Cut(solution.ride.starts, solution.ride.power_w)
+    fastest = solve(
+        solution.ride.problem, *cut, guess_m_s=solution.ride.motion.speed_m_s, evenness=0.0
+    )
+    second = counts.ride_free(prepared.problem, solution.ride)
+    times = (first.ride.motion.total_s, second.ride.motion.total_s)
+    best = min((first.ride, second.ride), key=lambda ridden: ridden.motion.total_s)
+    return Optimum(
+        prepared=replace(prepared, problem=solution.ride.problem),
+        solution=solution,
+        free=best,
+        free_times_s=times,
+        solves=counts.solves,
+        iterations=counts.iterations,
+        evaluations=counts.evaluations,
+        free_seconds=counts.free_seconds,
+        evenness_s=max(0.0, solution.ride.motion.total_s - fastest.ride.motion.total_s),
+    )
+
+
+def _pieces(prepared: Prepared, free: FreeRide, counts: _Counts) -> Solution:
+    """Cut by the free ride's prices and by the terrain; the better of the two, refined."""
+    plan = prepared.race.plan
+    problem = with_approaches(prepared.problem, free.ride)
+    shortest = SHORTEST_SLACK * plan.shortest_cue_s
+    guess = free.ride.motion.speed_m_s
+    cuts = [
+        cheapest_cuts(
+            free.priced,
+            most_pieces=plan.max_cues,
+            shortest_s=shortest,
+            levels_w=_levels_w(problem),
+        ),
+        _terrain_cut(prepared, shortest),
+    ]
+    best = min(
+        (counts.solve(problem, cut, guess) for cut in cuts),
+        key=lambda solution: solution.ride.motion.total_s,
+    )
+    refinement = refined(best, most_pieces=plan.max_cues, shortest_s=shortest, rounds=3)
+    counts.solves += refinement.solves
+    counts.iterations += refinement.iterations
+    return refinement.solution
+
+
+def _levels_w(problem: Problem) -> Array:
+    """Powers a piece may be tried at: every 10 W within the bounds, and critical power."""
+    levels = np.arange(problem.min_power_w, problem.max_power_w, LEVEL_W)
+    critical = np.unique(problem.at_critical_w)
+    every = np.concatenate([levels, critical, [problem.max_power_w]])
+    return np.unique(np.clip(every, problem.min_power_w, problem.max_power_w))
+
+
+def _terrain_cut(prepared: Prepared, shortest_s: float) -> Cut:
+    """Cuts by what the rider must overcome, at the speed of the constant ride."""
+    constant = prepared.constant
+    motion, road = constant.motion, prepared.problem.road
+    force, _ = road.resistance_n_and_slope(0.5 * (motion.speed_m_s[1:] + motion.speed_m_s[:-1]))
+    nodes = cut_pieces(
+        motion.elapsed_s,
+        force,
+        most_pieces=prepared.race.plan.max_cues,
+        shortest_m=shortest_s,
+    )
+    starts = nodes[:-1]
+    return Cut(starts, np.full(starts.size, constant.power_w[-1]))
