@@ -75,10 +75,22 @@ INVENTED = (
     Case("hill climb", "scarnhead_climb.gpx", wind=2.0),
     Case("technical city lap", "quillport_lap.gpx", "laps = 3\n", wind=5.0),
 )
+
+
+def _part(from_km: float, to_km: float) -> str:
+    return f"from_km = {from_km}\nto_km = {to_km}\n"
+
+
+# of recorded courses no more than 40 km, flat to alpine
 RECORDED = (
-    Case("climb and ridge", "ridge_climb_48km_no_time.gpx"),
+    Case("climb and ridge", "ridge_climb_48km_no_time.gpx", _part(0, 40)),
     Case("rail trail", "railtrail_out_back_28km.gpx"),
     Case("loop", "loop_11km_route_only.gpx"),
     Case("out and back", "out_back_13km_track_and_route.gpx"),
     Case("city", "city_12km_gpx10_duplicates.gpx"),
+    Case("rolling stage", "rolling_170km.gpx", _part(60, 95)),
+    Case("flat coast", "flat_coast_175km.gpx", _part(20, 60), wind=6.0),
+    Case("alpine stage", "alpine_113km_tunnel_spikes.gpx", _part(20, 50), wind=2.0),
+    Case("valley", "valley_167km_duplicates.gpx", _part(40, 70)),
+    Case("southern coast", "southern_coast_98km_duplicates.gpx", _part(10, 40)),
 )
