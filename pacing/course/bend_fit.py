@@ -19,6 +19,8 @@ _ROUNDS = 12
 _BATCH = 64
 # Share of the bulge of an arc between two points that stays unknown; from arcs with clean points.
 _HIDDEN = 0.4
+# A step astray is refused by its cost, not by an overflow; this is beyond any bend.
+_STRAIGHTEST = 25.0
 _TIGHTEST_M = 2.0
 # Weak prior: the fit stays within some of the first guess (heading rad, logarithm of the radius).
 _HEADING_PRIOR = 0.6
@@ -175,7 +177,7 @@ def _first_guess(line: Line, corners: list[Corner], batch: _Batch) -> Array:
 def _residuals(batch: _Batch, state: Array) -> tuple[Array, Array]:
     """Distance of the points from the fit (B, N), outward, and its slopes (B, N, 5)."""
     cx, cy, log_radius, before, after = (state[:, k : k + 1] for k in range(5))
-    radius = np.exp(log_radius)
+    radius = np.exp(np.minimum(log_radius, _STRAIGHTEST))
     dx, dy = batch.x - cx, batch.y - cy
     far = np.maximum(np.hypot(dx, dy), 1e-6)
     # Heading of the circle at the point, as near to the smooth line's as whole turns allow.
