@@ -49,10 +49,10 @@ def choose_track(gpx: GpxFile, file: Path, track: str | int | None) -> Track:
             expected="one course",
             mend="choose one with course.track in the race file, or with --track",
         )
-    raise refuse_few_points(0, file)
+    raise refuse_no_line(0, file)
 
 
-def refuse_few_points(count: int, file: Path) -> UnusableInputError:
+def refuse_no_line(count: int, file: Path) -> UnusableInputError:
     """The error for a course without points, or with one."""
     return NoCourseError(
         "no points" if count == 0 else "only one point",

@@ -20,6 +20,7 @@ GAP_M = 400.0
 GAP_RATIO = 8.0
 LARGEST_GAP_M = 2000.0
 MOST_IN_GAPS = 0.25
+FURTHEST_APART_M = 10_000.0
 
 
 def find_gaps(track: Track) -> list[Repair]:
@@ -87,6 +88,19 @@ def refuse_wide_gaps(
             mend=mend,
         )
     return None
+
+
+def refuse_few_points(track: Track, file: object) -> UnusableInputError | None:
+    """Why the points lie too far apart to be a road: the error to raise, or None."""
+    spacing = float(np.median(distances_m(track.lat_deg, track.lon_deg)))
+    if spacing <= FURTHEST_APART_M:
+        return None
+    return UnusableInputError(
+        f"{len(track)} points, {spacing / 1000:.0f} km apart",
+        file=file,
+        expected=f"points along the road, at most {FURTHEST_APART_M / 1000:.0f} km apart",
+        mend="export the course again with all its points",
+    )
 
 
 def _length(metres: float) -> str:

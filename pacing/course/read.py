@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import replace
 from pathlib import Path
 
-from pacing.course.choose import choose_track, refuse_few_points
+from pacing.course.choose import choose_track, refuse_no_line
 from pacing.course.gpx import read_gpx
 from pacing.course.table import read_table
 from pacing.course.track import Track
@@ -28,7 +28,7 @@ def read_track(file: Path | str, track: str | int | None = None) -> Track:
     else:
         found = choose_track(read_gpx(data, file), file, track)
     if len(found) < 2:
-        raise refuse_few_points(len(found), file)
+        raise refuse_no_line(len(found), file)
     return replace(found, name=found.name or file.stem)
 
 
