@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from pacing.motion.slopes import cell_end_slopes, time_adjoint
 from pacing.plan.balance import prices
 from pacing.plan.problem import Ride, ride
-from pacing.plan.solve import CROSSING_W, Solution
+from pacing.plan.solve import CROSSING_W, HELD_W, Solution
 
 Array = NDArray[np.float64]
 
@@ -37,7 +37,7 @@ def marginal(solution: Solution) -> Marginal:
     """Slopes at a solution, on both sides of critical power for the pieces held there."""
     ridden = solution.ride
     at_critical = ridden.problem.at_critical_w[ridden.starts]
-    held = np.abs(ridden.power_w - at_critical) < 1e-6
+    held = np.abs(ridden.power_w - at_critical) < HELD_W
     up = down = reduced_slope(ridden, solution.multipliers_s_per_j)
     if np.any(held):
         guess = ridden.motion.speed_m_s

@@ -16,7 +16,7 @@ Array = NDArray[np.float64]
 
 MOST_ITERATIONS = 300
 MOST_SIDE_CHANGES = 12
-CROSSING_W = 1e-3
+CROSSING_W = HELD_W = 1e-3
 LEAST_CROSSING_GAIN_S = 1e-3
 TIME_TOLERANCE_S = 1e-5
 JOULES_PER_UNIT = 1000.0
@@ -176,7 +176,7 @@ def _pays_to_cross(
 ) -> NDArray[np.bool_]:
     """Pieces (n,) held at critical power for which the other side is better."""
     ridden = solution.ride
-    held = np.abs(ridden.power_w - at_critical) < 1e-6
+    held = np.abs(ridden.power_w - at_critical) < HELD_W
     if not np.any(held):
         return held
     aside = np.where(held, at_critical + np.where(above, -CROSSING_W, CROSSING_W), ridden.power_w)
