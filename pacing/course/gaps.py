@@ -24,7 +24,7 @@ FURTHEST_APART_M = 10_000.0
 
 
 def find_gaps(track: Track) -> list[Repair]:
-    """The gaps of a track: steps over ``GAP_M`` and ``GAP_RATIO`` times those around.
+    """The gaps of a track: steps over ``GAP_M`` and ``GAP_RATIO`` times those around, or no road.
 
     Where segments meet counts as any other step. One repair for each gap.
     """
@@ -32,8 +32,9 @@ def find_gaps(track: Track) -> list[Repair]:
     if step.size == 0:
         return []
     km = track.read_km()
-    usual = median_filter(step, size=min(NEIGHBOURS, len(step)), mode="nearest")
-    gaps = np.flatnonzero((step > GAP_M) & (step > GAP_RATIO * usual))
+    usual = median_filter(step, size=min(NEIGHBOURS, len(step)), mode="reflect")
+    unlike = (step > GAP_M) & (step > GAP_RATIO * usual)
+    gaps = np.flatnonzero(unlike | (step > FURTHEST_APART_M))
     return [Repair(BRIDGED, float(km[i]), float(km[i + 1]), _length(float(step[i]))) for i in gaps]
 
 
@@ -88,19 +89,6 @@ def refuse_wide_gaps(
             mend=mend,
         )
     return None
-
-
-def refuse_few_points(track: Track, file: object) -> UnusableInputError | None:
-    """Why the points lie too far apart to be a road: the error to raise, or None."""
-    spacing = float(np.median(distances_m(track.lat_deg, track.lon_deg)))
-    if spacing <= FURTHEST_APART_M:
-        return None
-    return UnusableInputError(
-        f"{len(track)} points, {spacing / 1000:.0f} km apart",
-        file=file,
-        expected=f"points along the road, at most {FURTHEST_APART_M / 1000:.0f} km apart",
-        mend="export the course again with all its points",
-    )
 
 
 def _length(metres: float) -> str:

@@ -35,24 +35,36 @@ def outliers(track: Track) -> NDArray[np.bool_]:
     if len(track) < 4:
         return off
     step = distances_m(track.lat_deg, track.lon_deg)
-    usual = percentile_filter(step, 90, size=min(NEIGHBOURS, len(step)), mode="reflect")
-    usual = np.minimum(usual, np.percentile(step, 90)) if len(step) >= 10 else usual
-    jumps = np.flatnonzero(step > np.maximum(FAR_M, FAR_RATIO * usual))
-    if jumps.size and step[jumps[0]] > FAR_AT_END_M and jumps[0] < THROWN_AT_END:
-        off[: jumps[0] + 1] = True
-    if jumps.size and step[jumps[-1]] > FAR_AT_END_M and len(step) - jumps[-1] <= THROWN_AT_END:
-        off[jumps[-1] + 1 :] = True
-    if off.sum() >= len(track) - 2:
-        return np.zeros(len(track), dtype=bool)
+    jumps = _jumps(step)
     at = 0
     while at < len(jumps):
         back = _way_back(track, step, jumps, at)
-        if back is None or off[jumps[at]]:
-            at += 1
-            continue
-        off[jumps[at] + 1 : jumps[back] + 1] = True
-        at = back + 1
+        if back is not None:
+            off[jumps[at] + 1 : jumps[back] + 1] = True
+        at = at + 1 if back is None else back + 1
+    kept = np.flatnonzero(~off)
+    _mark_lone_ends(off, kept, distances_m(track.lat_deg[kept], track.lon_deg[kept]))
     return off
+
+
+def _jumps(step: Array) -> NDArray[np.intp]:
+    """Which steps (P-1,) [m] are far longer than those around and than most."""
+    usual = percentile_filter(step, 90, size=min(NEIGHBOURS, len(step)), mode="reflect")
+    usual = np.minimum(usual, np.percentile(step, 90)) if len(step) >= 10 else usual
+    return np.flatnonzero(step > np.maximum(FAR_M, FAR_RATIO * usual))
+
+
+def _mark_lone_ends(off: NDArray[np.bool_], kept: NDArray[np.intp], step: Array) -> None:
+    """Mark a few points beyond a great jump at either end of the points kept so far."""
+    if len(step) < 2 * THROWN_AT_END:
+        return
+    far = np.flatnonzero((step > FAR_AT_END_M) & (step > FAR_RATIO * np.percentile(step, 75)))
+    before = far[far < THROWN_AT_END]
+    after = far[far >= len(step) - THROWN_AT_END]
+    if before.size:
+        off[: kept[before[-1] + 1]] = True
+    if after.size:
+        off[kept[after[0] + 1] :] = True
 
 
 def _way_back(track: Track, step: Array, jumps: NDArray[np.intp], at: int) -> int | None:

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from pacing.course.course import CourseReport, CourseSpec
 from pacing.course.extent import refuse_long
-from pacing.course.gaps import BRIDGED, refuse_few_points, refuse_wide_gaps
+from pacing.course.gaps import BRIDGED, refuse_wide_gaps
 from pacing.course.geodesy import distances_m
 from pacing.course.lap import Lap
 from pacing.course.missing import missing_share, refuse_missing_heights
@@ -55,7 +55,6 @@ def refusals(found: Surveyed) -> tuple[UnusableInputError, ...]:
         for reason in (
             refuse_long(length * found.spec.laps, file),
             None if found.spec.flat else refuse_missing_heights(found.track, file),
-            refuse_few_points(found.track, file),
             refuse_wide_gaps(found.report.repairs, length, file),
             _refuse_scattered_points(found),
             _refuse_walls(found),

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from pacing.course.course import CourseSpec, Repair
 from pacing.course.extent import NoCourseError, refuse_long, refuse_short
-from pacing.course.gaps import refuse_few_points, refuse_wide_gaps
+from pacing.course.gaps import refuse_wide_gaps
 from pacing.course.geodesy import along_m, unwrapped_deg
 from pacing.course.heights import HeightProfile, smooth_heights
 from pacing.course.lap import Lap
@@ -100,7 +100,6 @@ def _is_hopeless(
     """Whether the line, which may be of any length, is refused whatever its heights and bends."""
     return (spec.from_km is None and spec.to_km is None) and bool(
         refuse_long(length_m, spec.file)
-        or refuse_few_points(track, spec.file)
         or refuse_wide_gaps(repairs, length_m, spec.file)
         or (not spec.flat and refuse_missing_heights(track, spec.file))
     )

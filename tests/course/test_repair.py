@@ -102,6 +102,21 @@ def test_a_lone_first_or_last_point_in_another_town_goes(at):
     assert repairs[0].what == "points far off the line left out"
 
 
+def test_a_point_thrown_off_near_the_start_does_not_take_the_start_with_it():
+    truth = line()
+    mended, repairs = repair(with_points(truth, 2, 0.0, -1.0, 3.0))
+    same_line(mended, truth)
+    assert repairs[0].amount.startswith("1 point, up to")
+
+
+def test_a_gap_after_the_first_points_is_told():
+    truth = line()
+    keep = np.ones(400, dtype=bool)
+    keep[3:90] = False
+    _, (told,) = repair(truth.kept(keep))
+    assert told.what == "gap bridged by a straight line"
+
+
 def test_a_dead_turn_is_no_outlier():
     out = line(200)
     back = Track(
@@ -174,7 +189,7 @@ def test_a_gap_is_told_with_its_place_and_size():
     truth = line()
     keep = np.ones(400, dtype=bool)
     keep[101:160] = False
-    mended, (told,) = repair(truth.kept(keep))
+    _, (told,) = repair(truth.kept(keep))
     assert told.what == "gap bridged by a straight line"
     _, _, gap = GEOD.inv(
         truth.lon_deg[100], truth.lat_deg[100], truth.lon_deg[160], truth.lat_deg[160]

@@ -98,5 +98,5 @@ def test_many_small_gaps_are_refused_together(survey):
     kept = [point for n, point in enumerate(points) if n % 300 < 200 or n < 300]
     report = survey(kept)
     assert report.verdict == "unusable"
-    assert "8 gaps, 8.1 km in all" in report.reasons[0]
+    assert "9 gaps, 9.1 km in all" in report.reasons[0]
     assert "at most 25 % of the course in gaps" in report.reasons[0]
