@@ -176,4 +176,42 @@ SOURCES: dict[str, Source] = {
         "Numerical Optimization",
         "Springer, second edition",
     ),
+    "patterson-thompson-1971": Source(
+        "Patterson, Thompson",
+        1971,
+        "Recovery of inter-block information when block sizes are unequal",
+        "Biometrika 58(3):545-554",
+    ),
+    "gilmour-1995": Source(
+        "Gilmour, Thompson, Cullis",
+        1995,
+        "Average information REML: an efficient algorithm for variance parameter estimation in "
+        "linear mixed models",
+        "Biometrics 51(4):1440-1450",
+    ),
+    "takahashi-1973": Source(
+        "Takahashi, Fagan, Chin",
+        1973,
+        "Formation of a sparse bus impedance matrix and its application to short circuit study",
+        "8th PICA Conference, 63-69",
+    ),
+    "welch-1947": Source(
+        "Welch",
+        1947,
+        "The generalization of Student's problem when several different population variances "
+        "are involved",
+        "Biometrika 34:28-35",
+    ),
+    "martin-2006": Source(
+        "Martin, Gardner, Barras, Martin",
+        2006,
+        "Modeling sprint cycling using field-derived parameters and forward integration",
+        "Med Sci Sports Exerc 38(3):592-597",
+    ),
+    "roa-2021": Source(
+        "Roa",
+        2021,
+        "Errors of field tests of aerodynamic drag in cycling from wind and gradient",
+        "Sports Biomech",
+    ),
 }
