@@ -59,12 +59,12 @@ def dead_turn_radius_m(line: Line, at_m: float) -> float | None:
     reach = _LOOK_BACK_M[(at_m - _LOOK_BACK_M >= 0.0) & (at_m + _LOOK_BACK_M <= line.length_m)]
     if reach.size < 4:
         return None
-    apart = np.linalg.norm(_places(line, at_m + reach) - _places(line, at_m - reach), axis=1)
-    noise = line.position_noise_m
-    same = (
-        np.median(apart) < _SAME_ROAD_M + 2 * noise and apart.max() < 2 * _SAME_ROAD_M + 2 * noise
-    )
-    return max(float(np.median(apart)) / 2, TIGHTEST_DEAD_TURN_M) if same else None
+    there = _places(line, at_m - reach)
+    back = _places(line, np.arange(at_m, min(at_m + 2.0 * reach[-1], line.length_m), 2.0))
+    apart = np.min(np.linalg.norm(there[:, None] - back[None, :], axis=2), axis=1)
+    most = _SAME_ROAD_M + 2.0 * line.position_noise_m
+    same = np.median(apart) < most and np.max(apart) < 2.0 * most
+    return max(float(np.median(apart)) / 2.0, TIGHTEST_DEAD_TURN_M) if same else None
 
 
 def _places(line: Line, distance_m: Array) -> Array:

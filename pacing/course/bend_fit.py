@@ -19,6 +19,8 @@ _ROUNDS = 12
 _BATCH = 64
 # Share of the bulge of an arc between two points that stays unknown; from arcs with clean points.
 _HIDDEN = 0.4
+# Errors of the radius of arcs with noise are so much larger than the theory of least squares says.
+_TRUE_ERROR = 1.35
 # A step astray is refused by its cost, not by an overflow; this is beyond any bend.
 _STRAIGHTEST = 25.0
 _TIGHTEST_M = 2.0
@@ -242,7 +244,7 @@ def _results(
     turn_error = np.sqrt(
         spread_of_turn[:, 3, 3] + spread_of_turn[:, 4, 4] - 2 * spread_of_turn[:, 3, 4]
     )
-    radius_error = np.sqrt(_spread(slopes, np.hypot(noise, hidden))[:, 2, 2])
+    radius_error = _TRUE_ERROR * np.sqrt(_spread(slopes, np.hypot(noise, hidden))[:, 2, 2])
     return [
         CornerFit(
             radius_m=float(radius[i]),

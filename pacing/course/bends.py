@@ -33,10 +33,11 @@ from pacing.course.turning import (
 
 Array = NDArray[np.float64]
 
-LEAST_CONFIDENCE = 0.65
+LEAST_CONFIDENCE = 0.7
 """Below this the radius is called unknown."""
 
 _WITHIN = 0.25
+_SURE_TURN_RAD = 0.1
 _LONGEST_FLANK_M = 100.0
 _HOOK_REACH_M = 25.0
 _WIDEST_BOUND_M = 400.0
@@ -91,7 +92,7 @@ def _bend(road: _Road, span: Span, fit: CornerFit) -> Bend | None:
     start, end = ends(road.turning, *span)
     turn, length = turn_rad(road.turning, *span), end - start
     error = 3.5 * float(likely_noise_m(road.line, fit.spacing_m)) / max(fit.spacing_m, length)
-    if fit.turn_error_rad < error:
+    if fit.turn_error_rad < max(error, _SURE_TURN_RAD):
         turn, error = fit.turn_rad, fit.turn_error_rad
     slight = np.degrees(abs(turn)) < LEAST_TURN_DEG
     if slight or abs(turn) < 4.0 * error or fit.radius_m > WIDEST_M:
@@ -160,6 +161,11 @@ def _corner(road: _Road, span: Span) -> Corner:
     b = int(np.searchsorted(at, latest, side="right"))
     a = max(min(a, int(np.searchsorted(at, start)) - 1), 0)
     b = min(max(b, int(np.searchsorted(at, end, side="right")) + 1), at.size)
+    # A straight whose points were left out is shown by its far end.
+    if a > 0 and earliest == start - flank and at[a] - at[a - 1] > 3.0 * spacing:
+        a -= 1
+    if b < at.size and latest == end + flank and at[b] - at[b - 1] > 3.0 * spacing:
+        b += 1
     return Corner(
         knots=slice(a, b),
         from_m=start,

@@ -14,7 +14,10 @@ Array = NDArray[np.float64]
 _ROUNDS = 6
 # Degrees of freedom of the changes of direction. So few leave bends and corners alone; chosen for
 # the true length of invented roads with 0.5 to 3 m of noise.
-_TAIL = 0.5
+_TAIL = 1.0
+# A corner is looked for over so much road to either side; it turns by a radian or so.
+_CORNER_BASE_M = 40.0
+_CORNER_AWAY = 0.6
 
 
 class Smoothed(NamedTuple):
@@ -35,7 +38,7 @@ def smoothed_places(raw: Array, most_noise_m: float) -> Smoothed:
     origin = raw.mean(axis=0)
     raw = raw - origin
     place, noise, likeliest = raw, 0.0, None
-    weight = np.ones(raw.shape[0] - 2)
+    weight = _first_weights(raw)
     for _ in range(_ROUNDS):
         step = np.linalg.norm(np.diff(place, axis=0), axis=1)
         step = np.maximum(step, 0.1 * np.median(step))
@@ -45,6 +48,22 @@ def smoothed_places(raw: Array, most_noise_m: float) -> Smoothed:
         place, noise, stiffness = _penalised(raw, bands, likeliest, most_noise_m)
         weight = _weights(_apply(change, place), step, weight, stiffness, noise)
     return Smoothed(place + origin, noise)
+
+
+def _first_weights(raw: Array) -> Array:
+    """Weights (K-2,) to begin with: low where the direction differs much before and after.
+
+    Without them a dead turn on a road that is straight but for it is rounded off, and a few rounds
+    do not bring it back.
+    """
+    way = np.concatenate(([0.0], np.cumsum(np.linalg.norm(np.diff(raw, axis=0), axis=1))))
+    knot = np.arange(1, raw.shape[0] - 1)
+    before = np.minimum(np.searchsorted(way, way[knot] - _CORNER_BASE_M), knot - 1)
+    after = np.searchsorted(way, way[knot] + _CORNER_BASE_M, side="right") - 1
+    back, on = raw[knot] - raw[before], raw[np.maximum(after, knot + 1)] - raw[knot]
+    size = np.linalg.norm(back, axis=1) * np.linalg.norm(on, axis=1)
+    away = 1.0 - np.sum(back * on, axis=1) / np.maximum(size, 1e-9)
+    return np.asarray(1.0 / (1.0 + (away / _CORNER_AWAY) ** 4))
 
 
 def _direction_change(step: Array) -> Array:

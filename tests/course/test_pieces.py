@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from itertools import combinations
+from itertools import combinations, pairwise
 
 import numpy as np
 import pytest
@@ -15,7 +15,7 @@ from pacing.course.pieces import cut_pieces
 def misfit(distance, load, cuts):
     """Sum over cells of length times squared distance from the mean of the piece."""
     total = 0.0
-    for a, b in zip(cuts[:-1], cuts[1:], strict=True):
+    for a, b in pairwise(cuts):
         length = np.diff(distance[a : b + 1])
         mean = np.average(load[a:b], weights=length)
         total += float(np.sum(length * (load[a:b] - mean) ** 2))
