@@ -18,6 +18,8 @@ Array = NDArray[np.float64]
 CAP_HELD_FOR_S = 180.0
 FIRST_30_S_SHARE = 1.3
 CLOCK_TOLERANCE_S = 2.0
+LEAST_W_PRIME_J = 1e-3
+"""A rider without W′ has this little: laws and shares of it divide by W′."""
 CRITICAL_POWER_TOLERANCE_W = 0.02
 
 
@@ -96,7 +98,7 @@ def problem_for(race: Race, road: Road, critical_power_w: float) -> Problem:
         start_speed_m_s=plan.start_speed_m_s,
         critical_power_w=np.full(share.size, critical_power_w),
         power_share=share,
-        w_prime_j=rider.w_prime_j,
+        w_prime_j=max(rider.w_prime_j, LEAST_W_PRIME_J),
         reserve_j=plan.reserve_j,
         min_power_w=plan.min_power_w,
         max_power_w=cap,

@@ -259,9 +259,9 @@ def _solve_within(first: Ride, bounds: _Bounds, tolerance_s: float, evenness: fl
     multipliers = np.asarray(result.get("multipliers", np.zeros(len(jacobian))))
     return Solution(
         ride=best,
-        status=int(result.status),
+        status=int(result.get("status", 0)),  # absent where bounds leave no choice
         message=str(result.message),
-        iterations=int(result.nit),
+        iterations=int(result.get("nit", 0)),
         evaluations=memory.evaluations,
         multipliers_s_per_j=multipliers[: margins_j(best).size] / JOULES_PER_UNIT,
         kkt_residual=_kkt_residual(

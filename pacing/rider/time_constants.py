@@ -88,4 +88,4 @@ WEIGEND_2022 = PowerOfDeficit(scale=2112.44, exponent=0.3892, offset_s=-14.506)
 
 def skiba_2015(w_prime_j: float) -> PowerOfDeficit:
     """τ = W′/D. Source: skiba-2015."""
-    return PowerOfDeficit(scale=w_prime_j, exponent=1.0)
+    return PowerOfDeficit(scale=max(w_prime_j, 1e-9), exponent=1.0)
