@@ -43,12 +43,12 @@ class Bend:
         """The radius to plan with: the one found, else a guess from the widest, if any.
 
         A bend is hardly ever as wide as its points allow, and the less so the wider that is. The
-        two figures were chosen so that invented roads with bends of 13 to 130 m take as long from
-        points 20 to 80 m apart as from points 5 m apart.
+        two figures were chosen so that 18 invented roads with bends of 20 to 500 m take on average
+        as long from points 10 to 80 m apart as from points 5 m apart.
         """
         if self.radius_m is not None:
             return self.radius_m
-        return None if self.widest_m is None else 1.0 / (1.0 / (0.75 * self.widest_m) + 0.01)
+        return None if self.widest_m is None else 1.0 / (1.0 / (0.75 * self.widest_m) + 1.0 / 130.0)
 
 
 @dataclass(frozen=True)
