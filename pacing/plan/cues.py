@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from pacing.plan.marginal import Marginal, marginal
 from pacing.plan.places import places_of, readable_nodes
 from pacing.plan.problem import Cuts, Ride, ride
-from pacing.plan.refine import merged_to
+from pacing.plan.refine import averaged, long_enough, merged_to
 from pacing.plan.rounding import long_pieces, rounded, split_for_steps
 from pacing.plan.solve import Solution, solve
 from pacing.race import Race
@@ -20,6 +20,7 @@ Array = NDArray[np.float64]
 
 REACH_M = 160.0
 """How far a boundary may be moved to a readable place."""
+MOST_TRIES = 5
 SHORTEST_SLACK = 1.02
 """Cues are placed a little longer than they need be: rounding changes their times."""
 
@@ -47,16 +48,27 @@ def print_cues(race: Race, solution: Solution) -> Printed:
 
 
 def _printed(race: Race, solution: Solution, step_w: float) -> Printed:
-    """Place the boundaries, solve again, round together."""
+    """Place the boundaries, solve again, round together; again where a cue came out too short."""
     readable = readable_nodes(race.course, places_of(race.course))
-    shortest = SHORTEST_SLACK * race.plan.shortest_cue_s
-    starts = placed(solution, marginal(solution), readable, shortest_s=shortest)
+    wanted_s = SHORTEST_SLACK * race.plan.shortest_cue_s
+    for _ in range(MOST_TRIES):
+        starts = placed(solution, marginal(solution), readable, shortest_s=wanted_s)
+        solution = _solved_at(solution, starts)
+        cut = split_for_steps(solution.ride, readable, step_w=step_w, shortest_s=wanted_s)
+        fits = starts.size < cut.size <= race.plan.max_cues
+        rough = _cut_at(solution, cut) if fits else solution
+        ridden = _merged(rounded(rough, step_w=step_w))
+        if ridden.starts.size == 1 or np.min(ridden.piece_time_s) >= race.plan.shortest_cue_s:
+            break
+        solution = _solved_at(solution, long_enough(ridden, shortest_s=wanted_s))
+    return Printed(ridden, solution.ride.motion.total_s)
+
+
+def _solved_at(solution: Solution, starts: Cuts) -> Solution:
+    """The optimum with pieces beginning elsewhere, from the powers now ridden there."""
     ridden = solution.ride
-    again = solve(ridden.problem, starts, ridden.power_w, guess_m_s=ridden.motion.speed_m_s)
-    cut = split_for_steps(again.ride, readable, step_w=step_w, shortest_s=shortest)
-    if starts.size < cut.size <= race.plan.max_cues:
-        again = _cut_at(again, cut)
-    return Printed(_merged(rounded(again, step_w=step_w)), again.ride.motion.total_s)
+    power = averaged(ridden.target_w, ridden.motion.time_s, starts)
+    return solve(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
 
 
 def _cut_at(solution: Solution, starts: Cuts) -> Solution:

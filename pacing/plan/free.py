@@ -29,6 +29,7 @@ IDLE_PRICE = 1e-3
 COARSEST_M = 30.0
 BARRIER = 1.0
 AT_CRITICAL = 0.03
+MOST_HALVINGS = 14
 
 
 @dataclass(frozen=True)
@@ -364,21 +365,21 @@ def ride_free(problem: Problem, start: Ride) -> FreeRide:
 
 
 def _kept_to_reserve(problem: Problem, first: Cuts, power: Array) -> Ride:
-    """Lower the power by as little as keeps the reserve."""
-    ridden = ride(problem, first, power)
-    low, high = 0.0, 0.5
-    if spare_j(ridden) >= 0.0:
-        return ridden
-    critical = problem.at_critical_w[first]
-    for _ in range(14):
+    """Lower what lies above critical power by as little as keeps the reserve."""
+    whole = ride(problem, first, power)
+    if spare_j(whole) >= 0.0:
+        return whole
+    over = np.maximum(power - problem.at_critical_w[first], 0.0)
+    low, high = 0.0, 1.0
+    kept = ride(problem, first, power - over, guess_m_s=whole.motion.speed_m_s)
+    for _ in range(MOST_HALVINGS):
         middle = 0.5 * (low + high)
-        lowered = np.where(power > critical, critical + (1.0 - middle) * (power - critical), power)
-        trial = ride(problem, first, lowered, guess_m_s=ridden.motion.speed_m_s)
+        trial = ride(problem, first, power - middle * over, guess_m_s=kept.motion.speed_m_s)
         if spare_j(trial) >= 0.0:
-            high, ridden = middle, trial
+            high, kept = middle, trial
         else:
             low = middle
-    return ridden
+    return kept
 
 
 def _priced(ridden: Ride, found: Found) -> Priced:

@@ -101,8 +101,8 @@ def minimise(
         complementary = _largest(point.slack * point.spare_price)
         error = max(_largest(stationarity), infeasible, complementary)
         if error < tolerance:
-            cost = float(terms.cost.sum())
-            return _found(point, cost, error, iteration, True)
+            total = float(terms.cost.sum())
+            return _found(point, total, error, iteration, True)
         inner = max(
             _largest(stationarity), infeasible, _largest(point.slack * point.spare_price - barrier)
         )

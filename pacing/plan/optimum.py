@@ -31,9 +31,9 @@ MOST_SETTLINGS = 4
 class Optimum:
     """The best pieces found, and the free ride they are measured against.
 
-    ``free`` is the better of the fine solves from two starts, a local optimum; ``free_times_s``
-    are both, ``free_seconds`` the wall time they took. ``evenness_s`` is what breaking near-ties
-    towards even power costs.
+    ``free`` is the better of the fine solves from two starts (or the pieces, should neither
+    have come as far), a local optimum; ``free_times_s`` are both, ``free_seconds`` the wall
+    time they took. ``evenness_s`` is what breaking near-ties towards even power costs.
     """
 
     prepared: Prepared
@@ -96,7 +96,7 @@ def optimise(race: Race) -> Optimum:
     )
     second = counts.ride_free(prepared.problem, solution.ride)
     times = (first.ride.motion.total_s, second.ride.motion.total_s)
-    best = min((first.ride, second.ride), key=lambda ridden: ridden.motion.total_s)
+    best = min((first.ride, second.ride, solution.ride), key=lambda ridden: ridden.motion.total_s)
     return Optimum(
         prepared=replace(prepared, problem=solution.ride.problem),
         solution=solution,

@@ -98,7 +98,7 @@ def _recut(
         target[insert.first : insert.last] += 0.5 * insert.step_w
         at_once -= 1
     starts = np.array(sorted(edges), dtype=np.intp)
-    return starts, _averaged(target, ridden.motion.time_s, starts)
+    return starts, averaged(target, ridden.motion.time_s, starts)
 
 
 def _cheapest(merges: Array, count: int, untouchable: set[int]) -> list[int] | None:
@@ -169,11 +169,39 @@ def merged_to(solution: Solution, most_pieces: int) -> Solution:
     while starts.size > max(1, most_pieces):
         drop = int(np.argmin(_merge_costs(starts, power, bend))) + 1
         starts = np.delete(starts, drop)
-        power = _averaged(ridden.target_w, ridden.motion.time_s, starts)
+        power = averaged(ridden.target_w, ridden.motion.time_s, starts)
     return solve(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
 
 
-def _averaged(target_w: Array, time_s: Array, starts: Cuts) -> Array:
+def long_enough(ridden: Ride, *, shortest_s: float) -> Cuts:
+    """Starts of the pieces so that none of the ride's is shorter than ``shortest_s``.
+
+    A short piece takes what it lacks from a neighbour that can spare it, or joins the neighbour
+    whose power is nearer.
+    """
+    elapsed, starts, power = ridden.motion.elapsed_s, ridden.starts, ridden.power_w
+    for_both_s = 2.0 * (shortest_s + float(np.max(ridden.motion.time_s)))
+    while starts.size > 1:
+        at = elapsed[np.append(starts, ridden.problem.cells)]
+        time = np.diff(at)
+        k = int(np.argmin(time))
+        if time[k] >= shortest_s:
+            break
+        if k + 1 < starts.size and at[k + 2] - at[k] >= for_both_s:
+            starts = starts.copy()
+            starts[k + 1] = np.searchsorted(elapsed, at[k] + shortest_s)
+        elif k > 0 and at[k + 1] - at[k - 1] >= for_both_s:
+            starts = starts.copy()
+            starts[k] = np.searchsorted(elapsed, at[k + 1] - shortest_s, side="right") - 1
+        else:
+            beside = [j for j in (k - 1, k + 1) if 0 <= j < starts.size]
+            other = min(beside, key=lambda j: abs(power[j] - power[k]))
+            drop = max(k, other)
+            starts, power = np.delete(starts, drop), np.delete(power, drop)
+    return starts
+
+
+def averaged(target_w: Array, time_s: Array, starts: Cuts) -> Array:
     """Time-weighted mean target over pieces."""
     return np.add.reduceat(target_w * time_s, starts) / np.add.reduceat(time_s, starts)
 
