@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from pacing.errors import OurFaultError as OurFaultError
     from pacing.errors import PacingError as PacingError
     from pacing.errors import UnusableInputError as UnusableInputError
+    from pacing.field import fit_drag as fit_drag
     from pacing.field import fit_power as fit_power
     from pacing.plan import Plan as Plan
     from pacing.plan import plan_race as plan_race
@@ -32,6 +33,7 @@ _HOMES = {
     "OurFaultError": "pacing.errors",
     "PacingError": "pacing.errors",
     "UnusableInputError": "pacing.errors",
+    "fit_drag": "pacing.field",
     "fit_power": "pacing.field",
     "Plan": "pacing.plan",
     "plan_race": "pacing.plan",

@@ -13,6 +13,7 @@ import typer
 
 from pacing.cli.course import course
 from pacing.cli.everywhere import Debug, Version
+from pacing.cli.fit_drag import fit_drag
 from pacing.cli.new import new
 from pacing.cli.plan import plan
 from pacing.errors import OurFaultError, PacingError
@@ -26,7 +27,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     no_args_is_help=True,
 )
-for command in (new, course, plan):
+for command in (new, course, plan, fit_drag):
     app.command()(command)
 
 

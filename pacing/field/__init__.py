@@ -1,6 +1,8 @@
 """From rides and tests back to numbers."""
 
+from pacing.field.drag_fit import fit_drag
+from pacing.field.drag_result import DragFit
 from pacing.field.power_fit import fit_power
 from pacing.field.power_result import PowerFit
 
-__all__ = ["PowerFit", "fit_power"]
+__all__ = ["DragFit", "PowerFit", "fit_drag", "fit_power"]

@@ -24,6 +24,7 @@ SLOW_M_S = 2.5
 BRAKING_M_S2 = 0.5
 """Slowing beyond what coasting explains by so much is the brake (common practice)."""
 BRAKING_REACH = 3
+IDLE_W, SLOWING_S, MOST_PEDALLED = 30.0, 20.0, 2
 PIECE_S, LEAST_PIECE_S = 60.0, 25.0
 RUN_S, LEAST_RUN_S, LONGEST_RUN_S = 30.0, 30.0, 180.0
 UNEVEN_M_S2, TURNING_DEG_S = 0.06, 4.0
@@ -47,9 +48,16 @@ class Stretches(NamedTuple):
 
 def stretches_of(session: Session, race: Race, method: str | None = None) -> Stretches:
     """Cut a session for ``method``, by default the one that the ride itself suggests."""
-    usable, masked = _usable(session, race)
+    slow = session.speed_m_s < SLOW_M_S
+    braking = _braking(session, race)
+    usable = session.usable & ~slow & ~braking
     if method is None:
         method = method_for(session, usable)
+    slowing = np.zeros_like(slow)
+    if method != COASTING:
+        slowing = usable & _slowing_down(session, slow | braking)
+        usable &= ~slowing
+    masked = _masked(session, {"braking": braking, "walking pace": slow, "slowing down": slowing})
     if method == COASTING:
         segments = coasts(session, usable)
     elif method == STEADY:
@@ -88,20 +96,35 @@ def _flat(session: Session) -> bool:
     return True
 
 
-def _usable(session: Session, race: Race) -> tuple[Flags, tuple[tuple[Masked, ...], ...]]:
-    """Steps in motion that no brake disturbs, and the stretches left out for it."""
-    slow = session.speed_m_s < SLOW_M_S
-    braking = _braking(session, race)
-    usable = session.usable & ~slow & ~braking
-    masked = []
-    for number, ride in enumerate(session.rides):
-        here = session.ride == number
-        found = [
-            *_listed(session, here & session.usable & braking, "braking"),
-            *_listed(session, here & session.usable & slow & ~braking, "walking pace"),
-        ]
-        masked.append(tuple(sorted([*ride.masked, *found], key=lambda m: (m.from_s, m.to_s))))
-    return usable, tuple(masked)
+def _masked(session: Session, causes: dict[str, Flags]) -> tuple[tuple[Masked, ...], ...]:
+    """For each ride what its reading masked and what is left out here, the first cause given."""
+    left = session.usable.copy()
+    listed: list[list[Masked]] = [list(ride.masked) for ride in session.rides]
+    for why, flags in causes.items():
+        for number, masks in enumerate(listed):
+            masks += _listed(session, left & flags & (session.ride == number), why)
+        left &= ~flags
+    return tuple(
+        tuple(sorted(masks, key=lambda mask: (mask.from_s, mask.to_s))) for masks in listed
+    )
+
+
+def _slowing_down(session: Session, trouble: Flags) -> Flags:
+    """Freewheeling shortly before or after brakes or walking pace: the brakes may be on, gently."""
+    trouble = trouble | (session.speed_m_s < SLOW_M_S)
+    times = np.cumsum(session.dt_s)
+    pedalled = np.cumsum(session.power_w > IDLE_W)
+    near = np.zeros(times.size, dtype=bool)
+    at = np.flatnonzero(trouble)
+    if at.size == 0:
+        return near
+    here = np.arange(times.size)
+    for side in (np.searchsorted(at, here), np.searchsorted(at, here, side="right") - 1):
+        inside = (side >= 0) & (side < at.size)
+        other = at[np.clip(side, 0, at.size - 1)]
+        close = np.abs(times[other] - times) <= SLOWING_S
+        near |= inside & close & (np.abs(pedalled[other] - pedalled) <= MOST_PEDALLED)
+    return near & (session.power_w <= IDLE_W)
 
 
 def _braking(session: Session, race: Race) -> Flags:
@@ -119,7 +142,10 @@ def _braking(session: Session, race: Race) -> Flags:
 
 
 def steady_runs(session: Session, usable: Flags) -> Segments:
-    """Runs at even speed and power on a straight; long ones in parts of up to three minutes."""
+    """Runs at even speed and power on a straight; long ones in parts of up to three minutes.
+
+    Source: martin-2006 (power over speed against speed squared gives drag area and Crr).
+    """
     gain = np.abs(_smooth(session.half_square, 11)) / np.maximum(_smooth(session.way_m, 11), 1.0)
     turn = _turning(session)
     even = usable & (gain < UNEVEN_M_S2) & (turn < TURNING_DEG_S)

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from pacing.air import Day
 from pacing.air.wind import rider_height_factor
+from pacing.field.drag_tilt import Tilt
 from pacing.field.recording_check import Ride
 from pacing.field.recording_drift import RATE_SD_M_PER_S
 from pacing.race import Race
@@ -18,12 +19,12 @@ Array = NDArray[np.float64]
 
 WEAK_CDA_M2, WEAK_CDA_SD_M2 = 0.30, 0.30
 WEAK_CRR_SD = 0.01
+FAR_OFF = (6.6, 9.2)
+"""Chi-square of one and of two degrees of freedom that is exceeded one time in a hundred."""
 DENSITY_SD = 0.005
 """Air density from a thermometer and a barometer nearby (common practice, no source)."""
 HEIGHT_SCALE_SD = 0.02
 """Barometers take the air column for the standard one: some 7 K of difference is 2 %."""
-LEVEL_TILT_SD = 0.002
-CAUSES = ("wind", "power meter", "mass", "air density", "speed", "heights", "rolling", "drag area")
 
 
 @dataclass(frozen=True)
@@ -33,7 +34,8 @@ class Unknowns:
     In order: drag areas by position [m²], Crr, then what disturbs them: wind per ride (from
     east and from north, or head wind alone) [m/s], relative errors of power meter, density,
     speed and heights, mass [kg], drift of heights per ride [m/s], tilt of the road. ``cause``
-    groups them for the budget of errors. An unknown known exactly is ``fixed``.
+    groups them for the budget of errors. An unknown known exactly is ``fixed``. ``loosened`` are
+    the rides whose forecast wind proved wrong.
     """
 
     names: tuple[str, ...]
@@ -41,6 +43,7 @@ class Unknowns:
     mean: Array
     precision: Array
     fixed: NDArray[np.bool_]
+    loosened: tuple[int, ...] = ()
 
     def at(self, name: str) -> int:
         """Index of an unknown; ValueError if there is none of that name."""
@@ -72,14 +75,14 @@ def unknowns_for(
     positions: Sequence[str],
     crr_sd: float | None,
     drag_area: tuple[float, float] = (WEAK_CDA_M2, WEAK_CDA_SD_M2),
-    tilt: tuple[Array, Array] | None,
+    tilt: Tilt | None,
     headed: bool,
 ) -> Unknowns:
     """The unknowns of these rides, with the race file's uncertainties as what is known.
 
     ``crr_sd`` None leaves the rolling coefficient to the rides. ``drag_area`` is mean and
-    standard deviation beforehand. ``tilt`` holds means and standard deviations of the road's
-    slope towards east and north, None where heights are used as recorded.
+    standard deviation beforehand. ``tilt`` is what is known of an even road's slope, None where
+    heights are used as recorded.
     """
     known = race.uncertainty
     found = _List([], [], [], [])
@@ -109,9 +112,32 @@ def unknowns_for(
                 rate, error = ride.drift.rate_m_per_s, ride.drift.rate_se_m_per_s
             found.add(f"drift {number}", "heights", rate, max(error, 1e-4))
     else:
-        for side, mean_, sd in zip(("east", "north"), *(t.tolist() for t in tilt), strict=True):
-            found.add(f"tilt {side}", "heights", mean_, sd)
+        blocks.append((len(found.names), tilt.covariance))
+        for side, slope in zip(("east", "north"), tilt.slope.tolist(), strict=True):
+            found.add(f"tilt {side}", "heights", slope, 1.0)
     return _unknowns(found, blocks)
+
+
+def with_wind_believed(unknowns: Unknowns, theta: Array, rides: int) -> Unknowns:
+    """The same, with less held of a forecast that the ride itself contradicts.
+
+    Where the wind found lies further off the forecast than one time in a hundred, the stated
+    errors of that ride's forecast are widened until it lies as far off as usual.
+    """
+    first = unknowns.start("wind east")
+    wide = 1 if unknowns.start("wind north") < 0 else 2
+    precision = unknowns.precision.copy()
+    loosened = unknowns.loosened
+    for number in range(rides):
+        here = slice(first + wide * number, first + wide * (number + 1))
+        off = theta[here] - unknowns.mean[here]
+        ratio = float(off @ precision[here, here] @ off) / wide
+        if ratio * wide > FAR_OFF[wide - 1]:
+            precision[here, here] /= ratio
+            loosened = (*loosened, number)
+    if loosened == unknowns.loosened:
+        return unknowns
+    return replace(unknowns, precision=precision, loosened=loosened)
 
 
 def _unknowns(found: _List, blocks: list[tuple[int, Array]]) -> Unknowns:

@@ -1,0 +1,315 @@
+"""Drag area and rolling coefficient from field rides."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from pacing.errors import UnusableInputError
+from pacing.field.drag_fragment import drag_fragment
+from pacing.field.drag_groups import Where, groups_of
+from pacing.field.drag_misfit import misfits
+from pacing.field.drag_result import (
+    Difference,
+    DragFit,
+    Interval,
+    Known,
+    PositionDrag,
+    RideWind,
+)
+from pacing.field.drag_segments import Segments
+from pacing.field.drag_session import Session, session_of
+from pacing.field.drag_solve import Solved, solve_balance
+from pacing.field.drag_stretches import BALANCE, COASTING, METHODS, Stretches, stretches_of
+from pacing.field.drag_system import Shape, system_of
+from pacing.field.drag_tilt import tilt_of
+from pacing.field.drag_unknowns import rolling_crr, unknowns_for, with_wind_believed
+from pacing.field.drag_warnings import warnings_for
+from pacing.field.recording import Masked, Recording, recording_of_frame
+from pacing.field.recording_check import Ride, check
+from pacing.field.recording_columns import Column
+from pacing.field.recording_read import read_recording
+from pacing.race import Race
+from pacing.units import GRAVITY_M_S2
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+Array = NDArray[np.float64]
+
+FEWEST_STRETCHES = 6
+MOST_OFF = 3.5
+"""A stretch that misses by more of its own standard deviations is left out, and said."""
+TRIMMINGS = 3
+TOLD = 0.3
+"""Of the variance of the wind beforehand less than this is left where a ride tells it."""
+WIDE_CRR, WIDE_CDA = 0.4, 0.15
+"""Half intervals over these shares of Crr and of drag area: not told apart."""
+LEAST_CRR_SD_SHARE = 0.25
+"""Rolling resistance of a road not yet ridden is known no better than this (common practice)."""
+
+
+def fit_drag(
+    rides: str | Path | pd.DataFrame | Sequence[str | Path | pd.DataFrame],
+    *,
+    race: Race,
+    columns: Mapping[str, Column] | None = None,
+    positions: Mapping[str, Where] | None = None,
+    method: str | None = None,
+) -> DragFit:
+    """Drag area [m²] and rolling coefficient from rides, as paths or DataFrames.
+
+    ``race`` gives masses, air, efficiency and what is uncertain; ``columns`` maps our column
+    names to a file's; ``positions`` says which was held when. ``method`` is "steady runs",
+    "energy balance" or "coast-downs", by default what the rides suggest.
+
+    Raises `UnusableInputError` for a file that is no ride, and where too little of the rides
+    can be used.
+
+    Source: martin-1998 (the forces), martin-2006 (the regression).
+    """
+    if method is not None and method not in METHODS:
+        raise UnusableInputError(f"a method {method!r}", expected=" or ".join(METHODS))
+    given = [rides] if isinstance(rides, str | Path) or hasattr(rides, "columns") else list(rides)
+    if not given:
+        raise UnusableInputError("no rides", expected="at least one")
+    recordings = [_recording(ride, columns, number) for number, ride in enumerate(given, 1)]
+    return fit_rides(
+        [check(recording) for recording in recordings],
+        race,
+        positions=positions or {},
+        method=method,
+    )
+
+
+def fit_rides(
+    rides: Sequence[Ride],
+    race: Race,
+    *,
+    positions: Mapping[str, Where] | None = None,
+    method: str | None = None,
+) -> DragFit:
+    """`fit_drag` for rides already read and checked."""
+    names, groups = groups_of(
+        [ride.recording for ride in rides], positions or {}, race.rider.positions[0].name
+    )
+    session = session_of(rides, race, groups, [ride.height_m for ride in rides])
+    stretches = stretches_of(session, race, method)
+    task = _Task(session, race, names, stretches)
+    _refuse_too_few(task, stretches.segments)
+    free, off = _solved(task, crr_sd=None)
+    separable = _separable(free)
+    solved = free
+    if not separable:
+        known = race.uncertainty.crr_pct / 100.0
+        solved, off = _solved(task, crr_sd=max(known, LEAST_CRR_SD_SHARE) * rolling_crr(race))
+    return _result(task, solved, off, separable=separable)
+
+
+@dataclass(frozen=True)
+class _Task:
+    """What is to be solved, whatever is taken as known of the tyres."""
+
+    session: Session
+    race: Race
+    names: tuple[str, ...]
+    stretches: Stretches
+
+
+def _recording(ride: object, columns: Mapping[str, Column] | None, number: int) -> Recording:
+    if isinstance(ride, str | Path):
+        return read_recording(ride, columns)
+    return recording_of_frame(ride, name=f"ride {number}")  # type: ignore[arg-type]
+
+
+def _solved(task: _Task, *, crr_sd: float | None) -> tuple[Solved, NDArray[np.bool_]]:
+    """The balance solved, stretches that do not fit left out; which were (K,)."""
+    session, race = task.session, task.race
+    even = task.stretches.method != BALANCE or not session.has_heights
+    unknowns = unknowns_for(
+        session.rides,
+        race,
+        positions=task.names,
+        crr_sd=crr_sd,
+        tilt=tilt_of(session.rides) if even else None,
+        headed=session.headed,
+    )
+    shapes = tuple(Shape(added=race.bike.cda_by_yaw) for _ in task.names)
+    whole = task.stretches.segments
+    off = np.zeros(len(whole), dtype=bool)
+    typical = _typical(task, even=even)
+    theta = None
+    for turn in range(TRIMMINGS + 2):
+        system = system_of(session, whole.kept(~off), race, unknowns, shapes)
+        solved = solve_balance(system, typical=typical, theta=theta)
+        theta = solved.theta
+        wrong = np.abs(solved.white) > MOST_OFF * max(1.0, float(np.std(solved.white)))
+        if (~off).sum() - wrong.sum() < FEWEST_STRETCHES:
+            wrong[:] = False
+        if turn == 0:
+            unknowns = with_wind_believed(unknowns, theta, len(session.rides))
+        if not wrong.any() and unknowns is system.unknowns:
+            break
+        off[np.flatnonzero(~off)[wrong]] = True
+    return solved, off
+
+
+def _typical(task: _Task, *, even: bool) -> Array:
+    """Scatter expected beforehand: at the ends [J], as a walk [J/√s], of gusts [m/s]."""
+    weight_n = task.race.mass_kg * GRAVITY_M_S2
+    if not even:
+        return np.array([0.15 * weight_n, 0.06 * weight_n, 0.3])
+    speed = 8.0
+    found = task.stretches.segments
+    if len(found):
+        speed = float(np.mean(task.session.speed_m_s[found.start]))
+    ends_j = 0.05 * task.race.mass_kg * speed if task.stretches.method == COASTING else 1.0
+    return np.array([ends_j, 15.0, 0.3])
+
+
+def _refuse_too_few(task: _Task, segments: Segments) -> None:
+    masked = [m.why for ride in task.stretches.masked for m in ride]
+    most = max(set(masked), key=masked.count) if masked else None
+    groups = task.session.group[segments.start]
+    for index, name in enumerate(task.names):
+        count = int(np.sum(groups == index))
+        if count >= FEWEST_STRETCHES or (len(task.names) > 1 and count >= 2):
+            continue
+        where = f" in position '{name}'" if len(task.names) > 1 else ""
+        raise UnusableInputError(
+            f"{count} stretches{where} that could be used for {task.stretches.method}"
+            + (f"; much is masked: {most}" if most else ""),
+            file=", ".join(ride.recording.name for ride in task.session.rides),
+            expected=f"at least {FEWEST_STRETCHES} of them",
+            mend="ride longer without stops and brakes, at several speeds, both directions",
+        )
+
+
+def _separable(solved: Solved) -> bool:
+    u = solved.system.unknowns
+    crr = _one(solved, u.at("rolling"))
+    cda = _one(solved, 0)
+    narrow = crr.half < WIDE_CRR * abs(crr.value) and cda.half < WIDE_CDA * abs(cda.value)
+    return narrow and crr.value > 0.0 and cda.value > 0.0
+
+
+def _one(solved: Solved, index: int) -> Interval:
+    direction = np.zeros(solved.theta.size)
+    direction[index] = 1.0
+    return _interval(solved, direction)
+
+
+def _interval(solved: Solved, direction: Array) -> Interval:
+    value, half = float(direction @ solved.theta), solved.half_width(direction)
+    return Interval(value, value - half, value + half)
+
+
+def _result(task: _Task, solved: Solved, off: NDArray[np.bool_], *, separable: bool) -> DragFit:
+    session, system = task.session, solved.system
+    u = system.unknowns
+    crr = _one(solved, u.at("rolling"))
+    found = tuple(
+        PositionDrag(name, _one(solved, i), float(system.lasting_s[system.group == i].sum()))
+        for i, name in enumerate(task.names)
+    )
+    direction = np.zeros(u.mean.size)
+    direction[0] = 1.0
+    parts = solved.budget(direction)
+    whole = max(sum(parts.values()), 1e-12)
+    speeds = system.way_m / system.lasting_s
+    fit = DragFit(
+        cda_m2=found[0].cda_m2.value,
+        cda_low_m2=found[0].cda_m2.low,
+        cda_high_m2=found[0].cda_m2.high,
+        crr=crr.value,
+        crr_low=crr.low,
+        crr_high=crr.high,
+        separable=separable,
+        method=task.stretches.method,
+        positions=found,
+        differences=_differences(solved, task.names),
+        known=_known(solved, task.race),
+        wind=_winds(solved),
+        budget={cause: float(part / whole) for cause, part in parts.items()},
+        masked=_masked(task, off),
+        warnings=(),
+        notes=tuple(f"{r.recording.name}: {note}" for r in session.rides for note in r.notes),
+        misfit=misfits(solved, task.race),
+        used_s=float(system.lasting_s.sum()),
+        moving_s=float(sum(ride.moving_s for ride in session.rides)),
+        stretches=len(system.segments),
+        speed_range_m_s=(float(np.quantile(speeds, 0.1)), float(np.quantile(speeds, 0.9))),
+    )
+    fit = replace(fit, warnings=warnings_for(fit, session.rides, task.race))
+    return replace(fit, fragment=drag_fragment(fit, task.race))
+
+
+def _differences(solved: Solved, names: tuple[str, ...]) -> tuple[Difference, ...]:
+    found = []
+    for i in range(1, len(names)):
+        for j in range(i):
+            direction = np.zeros(solved.theta.size)
+            direction[i], direction[j] = 1.0, -1.0
+            found.append(Difference(names[i], names[j], _interval(solved, direction)))
+    return tuple(found)
+
+
+def _known(solved: Solved, race: Race) -> Known:
+    """The speed at which the sum of air and tyres is known best, and that sum."""
+    u, system = solved.system.unknowns, solved.system
+    at = u.at("rolling")
+    weight_n = race.mass_kg * GRAVITY_M_S2
+    half_density = float(np.mean(system.session.half_density_kg_m3))
+    best = None
+    for speed in np.arange(3.0, 20.01, 0.25):
+        direction = np.zeros(solved.theta.size)
+        direction[0], direction[at] = half_density * speed**2, weight_n
+        interval = _interval(solved, direction)
+        if best is None or interval.half / abs(interval.value) < best[1].half / abs(best[1].value):
+            best = (float(speed), interval)
+    assert best is not None
+    covariance = solved.covariance
+    slope = covariance[0, at] / max(covariance[0, 0], 1e-18)
+    return Known(best[0], best[1], float(slope))
+
+
+def _winds(solved: Solved) -> tuple[RideWind, ...]:
+    u, session = solved.system.unknowns, solved.system.session
+    first, wide = u.start("wind"), 2 if session.headed else 1
+    found = []
+    for number, ride in enumerate(session.rides):
+        here = slice(first + wide * number, first + wide * (number + 1))
+        covariance = solved.covariance[here, here]
+        # Told by the ride where both directions are known much better than beforehand.
+        left = np.linalg.eigvals(covariance @ u.precision[here, here]).real
+        told = bool(wide == 2 and np.all(left < TOLD) and not u.fixed[here].any())
+        vector = solved.theta[here]
+        speed = float(np.hypot(*vector)) if wide == 2 else abs(float(vector[0]))
+        from_deg = (
+            float(np.degrees(np.arctan2(vector[0], vector[1])) % 360.0) if wide == 2 else None
+        )
+        error = float(np.sqrt(max(np.linalg.eigvalsh(covariance)[-1], 0.0)))
+        found.append(
+            RideWind(ride.recording.name, told, speed, from_deg, error, number in u.loosened)
+        )
+    return tuple(found)
+
+
+def _masked(task: _Task, off: NDArray[np.bool_]) -> tuple[tuple[str, Masked], ...]:
+    session, segments = task.session, task.stretches.segments
+    found = []
+    for number, ride in enumerate(session.rides):
+        masks = list(task.stretches.masked[number])
+        for a, b in zip(segments.start[off].tolist(), segments.end[off].tolist(), strict=True):
+            if session.ride[a] == number:
+                to_s = float(session.from_s[b - 1] + session.dt_s[b - 1])
+                why = "does not fit: brakes, a draught or a wrong height"
+                masks.append(Masked(float(session.from_s[a]), to_s, why))
+        masks.sort(key=lambda mask: (mask.from_s, mask.to_s))
+        found += [(ride.recording.name, mask) for mask in masks]
+    return tuple(found)
