@@ -10,6 +10,9 @@ from typing import Any
 
 import pytest
 
+for _name in ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS"):
+    os.environ.setdefault(_name, "1")  # as the command does, before numpy is imported
+
 
 def _recorded_folder() -> Path:
     named = os.environ.get("PACING_RECORDED")

@@ -14,9 +14,13 @@ import typer
 from pacing.cli.course import course
 from pacing.cli.everywhere import Debug, Version
 from pacing.cli.fit_drag import fit_drag
+from pacing.cli.fit_power import fit_power
 from pacing.cli.new import new
 from pacing.cli.plan import plan
 from pacing.errors import OurFaultError, PacingError
+
+for name in ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS"):
+    os.environ.setdefault(name, "1")  # many small systems: threads only wait for each other
 
 DONE, UNUSABLE, OUR_FAULT, INTERRUPTED = 0, 2, 3, 130
 
@@ -27,8 +31,8 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     no_args_is_help=True,
 )
-for command in (new, course, plan, fit_drag):
-    app.command()(command)
+for command in (new, course, plan, fit_power, fit_drag):
+    app.command(command.__name__.replace("_", "-"))(command)
 
 
 @app.callback()

@@ -17,8 +17,8 @@ import pacing
 from pacing.cli.app import main
 from pacing.errors import CannotBeRiddenError, OurFaultError
 
-COMMANDS = ("new", "course", "plan")
-NEEDED = {"new": "FOLDER", "course": "COURSE", "plan": "RACE.toml"}
+COMMANDS = ("new", "course", "plan", "fit-power")
+NEEDED = {"new": "FOLDER", "course": "COURSE", "plan": "RACE.toml", "fit-power": "EFFORTS.csv"}
 HEAVY = ("scipy", "pandas", "matplotlib", "gpxpy", "numpy", "rich")
 
 
