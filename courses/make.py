@@ -14,6 +14,7 @@ import numpy as np
 HERE = Path(__file__).resolve().parent
 sys.path.insert(0, str(HERE))
 
+from planning import plan  # noqa: E402
 from recording import Recording, record, write_gpx  # noqa: E402
 from roads import (  # noqa: E402
     Array,
@@ -126,6 +127,22 @@ def quillport_lap() -> Road:
     return Road("Quillport Lap", distance, lat, lon, height, radius, closed=True)
 
 
+def dunsorrel_gorge() -> Road:
+    """A mountain valley of 26 km, planned and not ridden: its heights know no tunnel or bridge."""
+    rng = _rng("dunsorrel", 0)
+    legs = rng.uniform(250, 750, 52)
+    vertices = _path(rng, legs, np.diff(rng.normal(0, 38, 53)))
+    line, radius = line_through(vertices, np.exp(rng.uniform(3.2, 5.0, len(vertices))))
+    lat, lon, distance = on_earth(line, 43.4, -28.7)
+    sections = random_sections(
+        rng, 26000, spread_pct=3.0, steepest_pct=9.0, lengths_m=(250.0, 1200.0)
+    )
+    height = heights_from_sections(
+        distance, sections, start_m=530.0, net_m=190.0, undulation=(rng, 0.3)
+    )
+    return Road("Dunsorrel Gorge", distance, lat, lon, height, radius)
+
+
 def pennick_vale() -> Road:
     """The starter's course: 12 km out over a low hill and back by another road."""
     rng = _rng("pennick", 0)
@@ -145,10 +162,12 @@ ROADS: dict[str, Callable[[], Road]] = {
     "brackenholt_round": brackenholt_round,
     "scarnhead_climb": scarnhead_climb,
     "quillport_lap": quillport_lap,
+    "dunsorrel_gorge": dunsorrel_gorge,
     "pennick_vale": pennick_vale,
 }
 
 EVERY_S = {"scarnhead_climb": 2.0, "pennick_vale": 2.0}
+PLANNED = ("dunsorrel_gorge",)
 
 
 def true_road(name: str) -> Road:
@@ -158,7 +177,10 @@ def true_road(name: str) -> Road:
 
 def recorded(name: str) -> Recording:
     """The points of ``<name>.gpx``, with the distance along the true road of each."""
-    return record(true_road(name), _rng(name, 1), every_s=EVERY_S.get(name, 1.0))
+    road, rng = true_road(name), _rng(name, 1)
+    if name in PLANNED:
+        return plan(road, rng)
+    return record(road, rng, every_s=EVERY_S.get(name, 1.0))
 
 
 def files() -> dict[Path, Recording]:

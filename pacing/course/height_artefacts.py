@@ -20,8 +20,8 @@ Mask = NDArray[np.bool_]
 STEEP = 0.14
 """Slope away from the local one, one way and then the other, that no road takes in one hump."""
 STEEP_RECORDED = 0.35
-LONGEST_M = 1000.0
-LONGEST_WITH_FEET_M = 1400.0
+LONGEST_M = 1200.0
+LONGEST_WITH_FEET_M = 1600.0
 STEEPEST_CHORD = 0.14
 FOOT_SLOPES = (0.04, 0.09)
 SMALLEST_FLANK_M = 3.0

@@ -17,7 +17,7 @@ from pacing.course.height_source import (
 Array = NDArray[np.float64]
 
 OVER_M = 100.0
-LESS_WHITE, LESS_FINE, LESS_COARSE, LESS_STEPPED = 0.75, 0.65, 0.6, 0.6
+LESS_WHITE, LESS_FINE, LESS_COARSE, LESS_STEPPED = 0.75, 0.6, 0.5, 0.45
 COARSE_LENGTH_M = 28.0
 MORE_FINE, MORE_COARSE, MORE_AT_CHANGES = 1.08, 1.25, 0.85
 """True over expected error, on the tuning seeds: terrain errors are not quite the model's."""

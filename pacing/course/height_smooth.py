@@ -59,12 +59,17 @@ def smooth_points(
     told: str | None,
     smoothing_m: float | None,
     timed: bool,
+    spare: int = 0,
 ) -> SmoothedHeights:
     """Heights of the road at uniform nodes (N+1,) from points without spikes.
 
     ``step_m`` is the step that heights are rounded to, ``told`` their source as the user has it.
+    The ``spare`` nodes at either end only show what stands there; no heights are given for them.
     """
     kept, judged, repairs = _judged(points, nodes_m, step_m=step_m, told=told, timed=timed)
+    if spare:
+        nodes_m = nodes_m[spare:-spare]
+        kept = kept.chosen((kept.at_m >= nodes_m[0]) & (kept.at_m <= nodes_m[-1]))
     model, share = judged.model, 1.0
     if judged.source == STEPPED:
         step = step_m or 1.0

@@ -21,6 +21,7 @@ GRID_ERROR_M = 0.4
 CLEAN_M = 0.12
 BAROMETER_M = 0.35
 SPARSE_M = 80.0
+NO_ROAD_BEND_PCT = 2.0
 RECORDER_STEPS_M = (0.2, HAND_HELD_STEP_M, 0.5)
 
 WHITE = Prior(HeightModel(0.3, 0.0, 15.0, 0.5), HeightModel(0.7, 0.0, 0.0, 1.5))
@@ -63,6 +64,8 @@ def judge_source(
         return _recorded(points, grid_m, model, f"steps of {step_m:.2g} m, as recorders store")
     if not timed and _spacing_m(points) > SPARSE_M:
         return Judged(TERRAIN_GRID, grid, "", "no times, and points as far apart as a planner's")
+    if not timed and white.bend_pct > NO_ROAD_BEND_PCT:
+        return Judged(TERRAIN_GRID, grid, "", "no times, and bends that no road has")
     if wandering and not timed and model.error_m > GRID_ERROR_M:
         reason = f"no times, and errors of {model.error_m:.1f} m that wander along the road"
         return Judged(TERRAIN_GRID, grid, "", reason)

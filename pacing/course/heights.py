@@ -16,7 +16,7 @@ from pacing.errors import UnusableInputError
 
 Array = NDArray[np.float64]
 
-WRAP_M = 1500.0
+WRAP_M = 3000.0
 FEWEST_POINTS = 5
 FEWEST_NODES = 20
 DRIFT_TOLD_M = 2.0
@@ -84,14 +84,20 @@ def smooth_heights(
     around = closed and len(grid) >= FEWEST_NODES
     extra, wrapped = _wrapped(points, grid) if around else (0, points)
     nodes = grid[0] + (grid[-1] - grid[0]) / (len(grid) - 1) * np.arange(-extra, len(grid) + extra)
+    spare = extra // 2
     smooth = smooth_points(
-        wrapped, nodes, step_m=step, told=source, smoothing_m=smoothing_m, timed=timed
+        wrapped,
+        nodes,
+        step_m=step,
+        told=source,
+        smoothing_m=smoothing_m,
+        timed=timed,
+        spare=spare,
     )
+    here = slice(extra - spare, extra - spare + len(grid))
     return HeightProfile(
         distance_m=grid,
-        elevation_m=_through_the_ends(
-            smooth.road_m[extra : extra + len(grid)], grid, at, height, smooth.noise_m
-        ),
+        elevation_m=_through_the_ends(smooth.road_m[here], grid, at, height, smooth.noise_m),
         source=smooth.judged.source,
         noise_m=smooth.noise_m,
         gradient_error_pct=min(smooth.gradient_error_pct, UNKNOWN_ERROR_PCT),
@@ -134,7 +140,8 @@ def _brought_level(at: Array, height: Array) -> tuple[Array, tuple[Repair, ...]]
 def _wrapped(points: Points, grid: Array) -> tuple[int, Points]:
     """A closed course with some of its end before its start and some of its start after its end.
 
-    Returns how many nodes that takes on either side, and the points.
+    Returns how many nodes that takes on either side, and the points. The outer half is there so
+    that no tunnel is cut in two by the end of the inner one.
     """
     length = float(grid[-1] - grid[0])
     cell = length / (len(grid) - 1)

@@ -14,12 +14,12 @@ from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.spatial import cKDTree
 
 COURSES = Path(__file__).resolve().parents[2] / "courses"
 sys.path.insert(0, str(COURSES))
 
 import make  # noqa: E402
+from planning import plan  # noqa: E402
 from recording import ridden_speed_m_s, wandering  # noqa: E402
 from roads import (  # noqa: E402
     Road,
@@ -43,8 +43,13 @@ class Spoiled:
     timed: bool
 
 
-def random_road(seed: int, length_m: float, spread_pct: float, steepest_pct: float) -> Road:
-    """A wandering road of given country; the seed decides line and heights."""
+def random_road(
+    seed: int, length_m: float, spread_pct: float, steepest_pct: float, pass_pct: float
+) -> Road:
+    """A wandering road of given country; the seed decides line and heights.
+
+    ``pass_pct`` is the mean gradient of passes that it climbs and descends every 10 km.
+    """
     rng = np.random.default_rng([77, seed])
     count = int(length_m / 450)
     heading = rng.normal(0.0, 0.6, count)
@@ -59,6 +64,7 @@ def random_road(seed: int, length_m: float, spread_pct: float, steepest_pct: flo
     height = heights_from_sections(
         distance, sections, start_m=300.0, curve_m=curve_m, undulation=(rng, 0.1 * spread_pct)
     )
+    height = height + pass_pct / 100 * 5000 * (1 - np.cos(distance / 10000 * 2 * np.pi)) / np.pi
     return Road(f"random {seed}", distance, lat, lon, height, radius)
 
 
@@ -67,14 +73,13 @@ def profile(name: str, seed: int) -> Road:
     """A road by name; the random ones change with the seed, the committed ones do not."""
     if name in make.ROADS:
         return make.true_road(name)
-    length_m, spread_pct, steepest_pct = RANDOM[name]
-    return random_road(seed, length_m, spread_pct, steepest_pct)
+    return random_road(seed, *RANDOM[name])
 
 
 RANDOM = {
-    "random plain": (30e3, 0.8, 2.5),
-    "random hills": (40e3, 3.0, 9.0),
-    "random alps": (35e3, 4.8, 11.0),
+    "random plain": (30e3, 0.8, 2.5, 0.0),
+    "random hills": (40e3, 3.0, 9.0, 0.0),
+    "random alps": (35e3, 3.5, 7.5, 5.5),
 }
 PROFILES = ["oldermere_flat", "brackenholt_round", "scarnhead_climb", "quillport_lap", *RANDOM]
 
@@ -111,7 +116,7 @@ def _drifting(time: Array, height: Array, rng: np.random.Generator) -> Array:
 
 
 def _lagging(time: Array, height: Array, rng: np.random.Generator) -> Array:
-    share = 1 - np.exp(-1 / 3.0)
+    share = 1 - np.exp(-1 / 2.5)
     held = np.empty(len(height))
     value = height[0]
     for i, new in enumerate(height):
@@ -128,107 +133,12 @@ def _stepped(step_m: float, sd: float) -> Callable[..., Spoiled]:
     )
 
 
-@dataclass(frozen=True)
-class Terrain:
-    """The land about a road: places (N, 2) along it, height there and slope across it (N,)."""
-
-    place_m: Array
-    ahead: Array
-    height_m: Array
-    across: Array
-
-    def height_at(self, place_m: Array) -> Array:
-        """Height of the land (K,) at places (K, 2), as of the nearest piece of the road."""
-        _, nearest = cKDTree(self.place_m).query(place_m)
-        off = place_m - self.place_m[nearest]
-        ahead = self.ahead[nearest]
-        aside = np.clip(ahead[:, 0] * off[:, 1] - ahead[:, 1] * off[:, 0], -60, 60)
-        return np.asarray(self.height_m[nearest] + self.across[nearest] * aside)
-
-
-def _terrain(road: Road, rng: np.random.Generator, artefacts: bool) -> Terrain:
-    """The land goes on beyond both ends of the road as the road would."""
-    north = (road.lat_deg - road.lat_deg.mean()) * 111200.0
-    east = (road.lon_deg - road.lon_deg.mean()) * 111200.0 * np.cos(np.radians(road.lat_deg))
-    line = np.column_stack([east, north])
-    height = road.height_m + (_artefacts(road, rng) if artefacts else 0.0)
-    beyond = np.arange(10.0, 250.0, 10.0)[:, None]
-    first, last = (line[0] - line[5]), (line[-1] - line[-6])
-    before = line[0] + beyond[::-1] * first / np.hypot(*first)
-    after = line[-1] + beyond * last / np.hypot(*last)
-    place = np.vstack([before, line, after])
-    ahead = np.gradient(place, axis=0)
-    along = np.concatenate([[0.0], np.cumsum(np.hypot(*np.diff(place, axis=0).T))])
-    knots = np.arange(0.0, along[-1] + 300.0, 300.0)
-    return Terrain(
-        place_m=place,
-        ahead=ahead / np.hypot(ahead[:, 0], ahead[:, 1])[:, None],
-        height_m=np.concatenate(
-            [
-                height[0] - road.slope[0] * beyond[::-1, 0],
-                height,
-                height[-1] + road.slope[-1] * beyond[:, 0],
-            ]
-        ),
-        across=np.interp(along, knots, rng.normal(0, 0.08, len(knots))),
-    )
-
-
-def _read_grid(
-    terrain: Terrain, place_m: Array, cell_m: float, error_m: float, rng: np.random.Generator
-) -> Array:
-    """Heights (K,) between the nodes of a grid of terrain heights, each with its own error."""
-    scaled = (place_m + rng.uniform(0, cell_m, 2)) / cell_m
-    corner = np.floor(scaled).astype(int)
-    sides = np.array([[0, 0], [0, 1], [1, 0], [1, 1]])
-    nodes, index = np.unique(
-        (corner[None] + sides[:, None]).reshape(-1, 2), axis=0, return_inverse=True
-    )
-    shift = place_m[0] - scaled[0] * cell_m
-    value = terrain.height_at(nodes * cell_m + shift) + rng.normal(0, error_m, len(nodes))
-    part = value[index.reshape(-1)].reshape(4, -1)
-    right, up = (scaled - corner).T
-    low = (1 - up) * part[0] + up * part[1]
-    high = (1 - up) * part[2] + up * part[3]
-    return np.asarray((1 - right) * low + right * high)
-
-
 def _terrain_grid(cell_m: float, error_m: float, artefacts: bool) -> Callable[..., Spoiled]:
-    """A planned route: no times, points some 30 m apart, a line a few metres off the road."""
-
     def spoil(road: Road, rng: np.random.Generator) -> Spoiled:
-        terrain = _terrain(road, rng, artefacts)
-        at = np.cumsum(rng.uniform(12, 45, int(road.length_m / 20)))
-        at = np.concatenate([[0.0], at[at < road.length_m - 5], [road.length_m]])
-        ends = len(terrain.place_m) - len(road.distance_m)
-        line = terrain.place_m[ends // 2 : len(terrain.place_m) - ends // 2]
-        aside = wandering(rng, len(at), 4.0, 4.0)
-        place = np.column_stack([np.interp(at, road.distance_m, line[:, i]) for i in (0, 1)])
-        height = _read_grid(terrain, place + aside[:, None], cell_m, error_m, rng)
-        return Spoiled(at, np.round(height, 1), timed=False)
+        route = plan(road, rng, cell_m=cell_m, error_m=error_m, artefacts=artefacts)
+        return Spoiled(route.true_distance_m, np.round(route.elevation_m, 1), timed=False)
 
     return spoil
-
-
-def _artefacts(road: Road, rng: np.random.Generator) -> Array:
-    """Terrain above tunnels and below bridges, one of either about every 6 km.
-
-    A road out and back passes each of them twice.
-    """
-    extra = np.zeros(len(road.distance_m))
-    for middle in np.arange(rng.uniform(1200, 2500), road.length_m - 1000, 6000.0):
-        middle += rng.uniform(-700, 700)
-        if rng.random() < 0.5:
-            length, height = rng.uniform(200, 700), rng.uniform(0.13, 0.3)
-        else:
-            length, height = rng.uniform(60, 250), -rng.uniform(0.12, 0.3)
-        u = (road.distance_m - middle) / length
-        shape = np.where(np.abs(u) < 0.5, np.cos(np.pi * u) ** 2, 0.0)
-        extra += height * length * shape
-    if np.hypot(*(road.lat_deg[[0, -1]] - road.lat_deg[0])) < 3e-4 and not road.closed:
-        back = np.interp(road.length_m - road.distance_m, road.distance_m, extra)
-        extra = np.where(np.abs(back) > np.abs(extra), back, extra)
-    return extra
 
 
 SOURCE_OF = {"w": "recorded", "d": "recorded", "l": "recorded", "1": "stepped"}
