@@ -9,7 +9,9 @@ Array = NDArray[np.float64]
 
 
 def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array]:
-    """Length (K-1,) of the road over each chord, and its curvature vector (K-1, 3).
+    """Length (K-1,) of the road over each ``chord`` (K-1,), and its curvature vector (K-1, 3).
+
+    ``place`` (K, 3) holds the knots, earth-centred; lengths in m, curvature in 1/m.
 
     The road bulges where both ends of a chord turn the same way. A turn belongs to the chord
     beyond which the road turns on: within an even bend half of it to either side, at the end of a
@@ -53,7 +55,11 @@ def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array
 
 
 def along_arcs(distance: Array, knot_distance: Array, place: Array, bend: Array) -> Array:
-    """Places (N+1, 3) at given distances: on each chord, set out by its parabola."""
+    """Places (N+1, 3) at ``distance`` (N+1,): on each chord, set out by its parabola.
+
+    Knots lie at ``knot_distance`` (K,) and ``place`` (K, 3); ``bend`` (K-1, 3) is the curvature
+    vector over each chord. Lengths in m, curvature in 1/m.
+    """
     k = np.clip(np.searchsorted(knot_distance, distance, side="right") - 1, 0, bend.shape[0] - 1)
     length = knot_distance[k + 1] - knot_distance[k]
     share = ((distance - knot_distance[k]) / length)[:, None]

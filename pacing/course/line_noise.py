@@ -28,7 +28,7 @@ class Smoothed(NamedTuple):
 
 
 def smoothed_places(raw: Array, most_noise_m: float) -> Smoothed:
-    """Places with the noise taken off, by weighted penalised changes of direction.
+    """Places ``raw`` (K, 3) [m] without noise, by weighted penalised changes of direction.
 
     The weights belong to changes of direction with heavy tails (Student's t), found by expectation
     and maximisation: few where the road bends, hardly any at a corner.

@@ -7,8 +7,8 @@ import re
 from collections.abc import Iterator
 from typing import Any, NamedTuple
 
-PHYSICAL = ("units", "smooth", "course", "air", "bike", "rider", "race", "motion", "study", "field")
-"""Where numbers are quantities; a solver's scaled variables and a page's layout are not."""
+PHYSICAL = ("units", "smooth", "course", "air", "bike", "rider", "race", "motion")
+"""Where numbers are quantities: not a solver's or a fit's scaled unknowns, nor a page's layout."""
 
 ONE_UNIT = (
     r"(?:m|m2|km|s|h|min|m_s|m_s2|kmh|w|kw|j|kj|kg|kg_m2|kg_m3|n|pa|hpa|k|c|deg|rad|pct|g|rpm|mm)"
@@ -98,7 +98,7 @@ def test_a_published_formula_says_the_unit_of_what_it_gives(modules: Any) -> Non
     bare = [
         found.where
         for found in public(modules)
-        if "Source:" in found.own and _numeric(found.node.returns)
+        if found.package in PHYSICAL and "Source:" in found.own and _numeric(found.node.returns)
         if not any(_has_unit(name) for name in (found.node.name, *found.node.name.split("_")))
         and not SPOKEN.search(found.node.name.replace("_", " "))
         and not SPOKEN.search(found.own)
