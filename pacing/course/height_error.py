@@ -71,9 +71,9 @@ def stated_error_pct(
     left_open = float(np.sqrt(np.mean(gradients_pct(departures_m, step_m) ** 2)))
     if judged.source == TERRAIN_GRID or (judged.source == RECORDED and model.error_m > 0.5):
         return left_open * (MORE_COARSE if model.error_length_m > COARSE_LENGTH_M else MORE_FINE)
-    if judged.source == STEPPED or judged.sensor != "barometer" or len(road_m) < 3:
-        return left_open
     gradient = gradients_pct(road_m, step_m)
+    if judged.source == STEPPED or judged.sensor != "barometer" or gradient.size < 2:
+        return left_open
     speed = np.clip(11.0 - 1.1 * gradient, 3.5, 17.0)
     late = LAG_S * speed[1:] * np.diff(gradient) / step_m
     drift = DRIFT_PCT * np.sqrt(10.0 / speed)
