@@ -14,7 +14,7 @@ def fit_power(
     efforts: Annotated[
         Path,
         typer.Argument(
-            metavar="EFFORTS",
+            metavar="EFFORTS.csv",
             help="A table of efforts (duration_s, power_w, if you like date and position), or a"
             " ride with power, both as CSV.",
             show_default=False,

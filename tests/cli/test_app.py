@@ -75,7 +75,7 @@ def test_every_command_has_help_with_an_example(
 def test_help_is_plain_text(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["--help"]) == 0
     text = capsys.readouterr().out
-    assert re.fullmatch(r"[\n -~]+", text), "no boxes, colours or pictures"
+    assert re.fullmatch(r"[\n -~′]+", text), "no boxes, colours or pictures"
     assert all(f"\n  {command} " in text for command in COMMANDS)
 
 
