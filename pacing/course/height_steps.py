@@ -16,7 +16,7 @@ COARSE_M = 0.9
 SURE_SHARE = 0.05
 HELD_SHARE = 0.2
 FLICKER_POINTS = 5
-FLICKER_SHARE = 0.02
+FLICKER_SHARE = 0.01
 
 
 class Points(NamedTuple):
@@ -74,11 +74,15 @@ def without_held(points: Points, step_m: float | None) -> Points:
 
 
 def flickers(points: Points) -> bool:
-    """Whether rounded heights go to and fro between two steps, as noise before rounding makes."""
+    """Whether rounded heights go to, fro and to again, as noise before rounding makes.
+
+    To and fro once may be a summit.
+    """
     change = np.flatnonzero(np.diff(points.height_m) != 0)
     rise = np.diff(points.height_m)[change]
     back = (rise[1:] * rise[:-1] < 0) & (np.diff(change) <= FLICKER_POINTS)
-    return bool(len(back) > 0 and np.mean(back) > FLICKER_SHARE)
+    twice = back[1:] & back[:-1]
+    return bool(len(twice) > 0 and np.mean(twice) > FLICKER_SHARE)
 
 
 def at_changes(points: Points, step_m: float) -> Points:
