@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.course.pieces import cut_pieces
+from pacing.motion.road import Road
 from pacing.plan.approach import with_approaches
 from pacing.plan.cut import Cut, cheapest_cuts
 from pacing.plan.free import FreeRide, ride_free
@@ -25,6 +26,7 @@ SHORTEST_SLACK = 1.06
 """Pieces are cut a little longer than cues need be, so that there is room to move them."""
 LEVEL_W = 10.0
 MOST_SETTLINGS = 4
+REFINING_ROUNDS = 4
 
 
 @dataclass(frozen=True)
@@ -78,15 +80,17 @@ def optimise(race: Race) -> Optimum:
     counts = _Counts()
     prepared = prepare(race)
     refuse_stall(prepared.constant)
-    first = counts.ride_free(prepared.problem, prepared.constant)
-    prepared = settled(prepared, first.ride)
-    solution = _pieces(prepared, first, counts)
+    plain = _by_terrain(prepared, counts)
+    refuse_stall(plain.ride)
+    first = counts.ride_free(prepared.problem, plain.ride)
+    prepared = settled(prepared, min(first.ride, plain.ride, key=_time_s))
+    solution = _pieces(prepared, plain, first, counts)
     for _ in range(MOST_SETTLINGS):
         again = settled(prepared, solution.ride)
         if again is prepared:
             break
         prepared = again
-        problem = with_approaches(prepared.problem, first.ride)
+        problem = replace(prepared.problem, road=_with_limits(prepared, solution))
         cut = Cut(solution.ride.starts, solution.ride.power_w)
         solution = counts.solve(problem, cut, solution.ride.motion.speed_m_s)
     refuse_stall(solution.ride)
@@ -110,29 +114,56 @@ def optimise(race: Race) -> Optimum:
     )
 
 
-def _pieces(prepared: Prepared, free: FreeRide, counts: _Counts) -> Solution:
-    """Cut by the free ride's prices and by the terrain; the better of the two, refined."""
-    plan = prepared.race.plan
-    problem = with_approaches(prepared.problem, free.ride)
+def _by_terrain(prepared: Prepared, counts: _Counts) -> Solution:
+    """Pieces cut by what the rider must overcome, at the speed of the constant ride."""
+    constant, plan = prepared.constant, prepared.race.plan
+    motion, road = constant.motion, prepared.problem.road
+    force, _ = road.resistance_n_and_slope(0.5 * (motion.speed_m_s[1:] + motion.speed_m_s[:-1]))
+    nodes = cut_pieces(
+        motion.elapsed_s,
+        force,
+        most_pieces=plan.max_cues,
+        shortest_m=SHORTEST_SLACK * plan.shortest_cue_s,
+    )
+    cut = Cut(nodes[:-1], np.full(nodes.size - 1, constant.power_w[-1]))
+    return counts.solve(prepared.problem, cut, motion.speed_m_s)
+
+
+def _pieces(prepared: Prepared, plain: Solution, free: FreeRide, counts: _Counts) -> Solution:
+    """Cut by the free ride's prices and by the terrain; the better of the two, refined.
+
+    A fine solve that has not come as far as the pieces by terrain has nothing to teach.
+    """
+    plan, problem = prepared.race.plan, prepared.problem
     shortest = SHORTEST_SLACK * plan.shortest_cue_s
-    guess = free.ride.motion.speed_m_s
-    cuts = [
-        cheapest_cuts(
+    guess = plain.ride.motion.speed_m_s
+    cuts = [Cut(plain.ride.starts, plain.ride.power_w)]
+    if _time_s(free.ride) < _time_s(plain.ride):
+        problem = with_approaches(problem, free.ride)
+        guess = free.ride.motion.speed_m_s
+        priced = cheapest_cuts(
             free.priced,
             most_pieces=plan.max_cues,
             shortest_s=shortest,
             levels_w=_levels_w(problem),
-        ),
-        _terrain_cut(prepared, shortest),
-    ]
-    best = min(
-        (counts.solve(problem, cut, guess) for cut in cuts),
-        key=lambda solution: solution.ride.motion.total_s,
+        )
+        cuts.append(priced)
+    best = min((counts.solve(problem, cut, guess) for cut in cuts), key=lambda s: _time_s(s.ride))
+    refinement = refined(
+        best, most_pieces=plan.max_cues, shortest_s=shortest, rounds=REFINING_ROUNDS
     )
-    refinement = refined(best, most_pieces=plan.max_cues, shortest_s=shortest, rounds=3)
     counts.solves += refinement.solves
     counts.iterations += refinement.iterations
     return refinement.solution
+
+
+def _with_limits(prepared: Prepared, solution: Solution) -> Road:
+    """The road brought up to date, with the approaches to slow places that were solved with."""
+    return replace(prepared.problem.road, limit_m_s=solution.ride.problem.road.limit_m_s)
+
+
+def _time_s(ridden: Ride) -> float:
+    return ridden.motion.total_s
 
 
 def _levels_w(problem: Problem) -> Array:
@@ -141,18 +172,3 @@ def _levels_w(problem: Problem) -> Array:
     critical = np.unique(problem.at_critical_w)
     every = np.concatenate([levels, critical, [problem.max_power_w]])
     return np.unique(np.clip(every, problem.min_power_w, problem.max_power_w))
-
-
-def _terrain_cut(prepared: Prepared, shortest_s: float) -> Cut:
-    """Cuts by what the rider must overcome, at the speed of the constant ride."""
-    constant = prepared.constant
-    motion, road = constant.motion, prepared.problem.road
-    force, _ = road.resistance_n_and_slope(0.5 * (motion.speed_m_s[1:] + motion.speed_m_s[:-1]))
-    nodes = cut_pieces(
-        motion.elapsed_s,
-        force,
-        most_pieces=prepared.race.plan.max_cues,
-        shortest_m=shortest_s,
-    )
-    starts = nodes[:-1]
-    return Cut(starts, np.full(starts.size, constant.power_w[-1]))
