@@ -7,6 +7,8 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
+_CORNER_SHARE = 0.25
+
 
 def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array]:
     """Length (K-1,) of the road over each ``chord`` (K-1,), and its curvature vector (K-1, 3).
@@ -16,7 +18,8 @@ def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array
     The road bulges where both ends of a chord turn the same way. A turn belongs to the chord
     beyond which the road turns on: within an even bend half of it to either side, at the end of a
     bend none to the straight. Where two turns stand alone the road between may be an even arc
-    or a corner that fell between the points: the length is the mean of the two.
+    or a corner that fell between the points: a quarter of the way to the corner's length was
+    nearest the truth on invented roads.
     """
     if chord.size == 1:
         return chord, np.zeros((1, 3))
@@ -45,7 +48,7 @@ def chord_arcs(place: Array, chord: Array, noise_m: float) -> tuple[Array, Array
     trust = np.clip((2.0 - first - last) / 0.8, 0.0, 1.0)
     trust *= np.clip(2.5 - chord / np.minimum(length[:-2], length[2:]), 0.0, 1.0)
     first, last = trust * first, trust * last
-    alone = np.clip((at_start * at_end - 0.25) / 0.75, 0.0, 1.0) / 4
+    alone = np.clip((at_start * at_end - 0.25) / 0.75, 0.0, 1.0) * _CORNER_SHARE
     # First and last over the chord: an even arc has a third of the triangle's excess.
     excess = first * last / 2 * ((1 - alone) / 3 + alone)
     inward = np.concatenate((change[:1], change)) + np.concatenate((change, change[-1:]))
