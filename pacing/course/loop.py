@@ -18,11 +18,16 @@ SEAM_M = 1000.0
 AT_SEAM_M = 150.0
 
 
+def ends_together(line: Line) -> bool:
+    """Whether the line ends where it began, so that finish and start have one height."""
+    gap = distance_between_m(line.lat_deg[-1], line.lon_deg[-1], line.lat_deg[0], line.lon_deg[0])
+    return bool(gap <= LOOP_WITHIN_M)
+
+
 def is_loop(line: Line) -> bool:
     """Whether the line ends where it began and passes on in the direction it set out."""
-    gap = distance_between_m(line.lat_deg[-1], line.lon_deg[-1], line.lat_deg[0], line.lon_deg[0])
     turn = abs((line.heading_deg[0] - line.heading_deg[-1] + 180.0) % 360.0 - 180.0)
-    return gap <= LOOP_WITHIN_M and bool(turn <= LOOP_TURN_DEG)
+    return ends_together(line) and bool(turn <= LOOP_TURN_DEG)
 
 
 def bends_of(track: Track, line: Line) -> tuple[Bend, ...]:

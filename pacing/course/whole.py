@@ -14,7 +14,7 @@ from pacing.course.geodesy import along_m, unwrapped_deg
 from pacing.course.heights import HeightProfile, smooth_heights
 from pacing.course.lap import Lap
 from pacing.course.line import Line, smooth_line
-from pacing.course.loop import bends_of, is_loop
+from pacing.course.loop import bends_of, ends_together, is_loop
 from pacing.course.missing import refuse_missing_heights
 from pacing.course.track import Track
 
@@ -132,6 +132,7 @@ def _profile(track: Track, line: Line, spec: CourseSpec, *, read: bool) -> Heigh
         smoothing_m=spec.smoothing_m,
         timed=track.time_s is not None,
         closed=is_loop(line) and last - first == len(grid) - 1,
+        returns=ends_together(line) and last - first == len(grid) - 1,
     )
     return replace(
         profile,
