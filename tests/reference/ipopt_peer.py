@@ -15,6 +15,7 @@ from dataclasses import dataclass
 import casadi as ca
 import numpy as np
 from exported import SLOWEST_M_S, Exported
+from march import follow_pools, pools_of
 
 WATTS, JOULES = 100.0, 5000.0  # units of the unknowns
 SECONDS = 100.0  # unit of the objective
@@ -114,18 +115,20 @@ def solve(
     *,
     starts: Sequence[int] | None = None,
     constant_w: float | None = None,
+    near_w: np.ndarray | None = None,
     tolerance: float = 1e-8,
     verbose: bool = False,
 ) -> PeerSolution:
     """Least time over ``road``; ``starts`` are the pieces' first cells, None frees every cell.
 
-    ``constant_w`` is the power of the ride that IPOPT starts from (default: 0.97 CP).
+    IPOPT starts from a ride at ``constant_w`` (default: 0.97 CP), or at ``near_w`` (N,).
     """
     began = time.perf_counter()
     cells = road.cells
     cp, share = road.critical_power_w, road.power_share
-    guess_w = 0.97 * float(np.min(cp)) if constant_w is None else constant_w
-    start_speeds, _ = march_speeds(road, np.minimum(guess_w * share, road.highest_power_w()))
+    guess_w = np.full(cells, 0.97 * float(np.min(cp)) if constant_w is None else constant_w)
+    guess_w = np.minimum(guess_w if near_w is None else near_w, road.highest_power_w())
+    start_speeds, _ = march_speeds(road, guess_w)
     _, could_hold = march_speeds(road, road.max_power_w)
     slow_start = np.zeros(cells, dtype=bool)
     slow_start[:3] = road.start_speed_m_s < 3.0
@@ -138,10 +141,11 @@ def solve(
     high = np.minimum(road.limit_m_s, 40.0)
     high[0] = low[0]
     v = program.unknown(low, high, np.clip(start_speeds, low, high))
-    over = guess_w * share[first] - cp[first] * share[first]
+    over = (guess_w / share - cp)[first]
+    least = 10.0 if near_w is None else 1.0
     spread = (road.max_power_w + cp[first]) / WATTS
-    u = program.unknown(np.zeros(first.size), spread, np.maximum(over, 10.0) / WATTS)
-    q = program.unknown(np.zeros(first.size), spread, np.maximum(-over, 10.0) / WATTS)
+    u = program.unknown(np.zeros(first.size), spread, np.maximum(over, least) / WATTS)
+    q = program.unknown(np.zeros(first.size), spread, np.maximum(-over, least) / WATTS)
     power_g = share[first] * (cp[first] + WATTS * (u - q))
     top = road.highest_power_w()
     top_g = np.full(first.size, np.inf)
@@ -154,7 +158,8 @@ def solve(
     _hold_motion(program, road, v0, v1, power, slow_start)
     if starts is not None:
         _hold_pieces(program, road, groups, power_g, v1)
-    debt, wasted = _hold_budget(program, road, u[g], q[g], pace)
+    owed = None if near_w is None else _owed_j(road, near_w, start_speeds)
+    debt, wasted = _hold_budget(program, road, u[g], q[g], pace, owed)
     program.prices.append(WASTE_PRICE * ca.sum1(u[g] * q[g] / pace))
     total = ca.sum1(1.0 / pace)
     found = program.solve(total, tolerance=tolerance, verbose=verbose)
@@ -231,8 +236,26 @@ def _hold_pieces(
             program.prices.append(HELD_PRICE * ca.sum1(room * less[held]))
 
 
+def _owed_j(road: Exported, power_w: np.ndarray, speed_m_s: np.ndarray) -> np.ndarray:
+    """What each pool (k, N+1) is short of on the ride that the solve starts from."""
+    time_s = 2.0 * road.cell_m / (speed_m_s[1:] + speed_m_s[:-1])
+    pools = pools_of(road.recovery_law, road.w_prime_j)
+    rows = [pools]
+    excess = power_w / road.power_share - road.critical_power_w
+    for over, duration in zip(excess.tolist(), time_s.tolist(), strict=True):
+        pools = follow_pools(road.recovery_law, pools, over, duration, road.w_prime_j)
+        rows.append(pools)
+    table = np.array(rows).T
+    return table[:, :1] - table
+
+
 def _hold_budget(
-    program: _Program, road: Exported, u: ca.SX, q: ca.SX, pace: ca.SX
+    program: _Program,
+    road: Exported,
+    u: ca.SX,
+    q: ca.SX,
+    pace: ca.SX,
+    owed_j: np.ndarray | None,
 ) -> tuple[ca.SX, ca.SX]:
     """The W′ debt at nodes (N+1,) by the trapezoid rule, at most W′ − reserve; and the waste."""
     name = road.recovery_law["name"]
@@ -242,29 +265,36 @@ def _hold_budget(
     if name in ("none", "skiba-2015"):
         high = np.full(cells + 1, room / JOULES)
         high[0] = 0.0
-        debt = program.unknown(np.zeros(cells + 1), high, 0.3 * high)
+        begin = 0.3 * high if owed_j is None else np.clip(owed_j[0] / JOULES, 0.0, high)
+        debt = program.unknown(np.zeros(cells + 1), high, begin)
         middle = 0.5 * (debt[:-1] + debt[1:]) * JOULES / road.w_prime_j
         won = q * middle if name == "skiba-2015" else 0.0 * q
         change = (debt[1:] - debt[:-1]) * pace * JOULES / WATTS
         program.hold(change - u + won, zero, zero)
         return debt * JOULES, ca.sum1(ca.fmin(u, won) / pace) * WATTS
     if name == "two-phase":
-        return _hold_two_pools(program, road, u, q, pace)
+        return _hold_two_pools(program, road, u, q, pace, owed_j)
     raise ValueError(f"no transcription of {name}")
 
 
 def _hold_two_pools(
-    program: _Program, road: Exported, u: ca.SX, q: ca.SX, pace: ca.SX
+    program: _Program,
+    road: Exported,
+    u: ca.SX,
+    q: ca.SX,
+    pace: ca.SX,
+    owed_j: np.ndarray | None,
 ) -> tuple[ca.SX, ca.SX]:
     """Fast and slow deficits; recovery x · deficit/τ in each, in total at most q."""
     law, cells = road.recovery_law, road.cells
     room = road.w_prime_j - road.reserve_j
     shares = np.array([law["quick_share"], 1.0 - law["quick_share"]])
     deficits = []
-    for share in shares:
+    for k, share in enumerate(shares):
         high = np.full(cells + 1, share * road.w_prime_j / JOULES)
         high[0] = 0.0
-        deficits.append(program.unknown(np.zeros(cells + 1), high, 0.2 * high))
+        begin = 0.2 * high if owed_j is None else np.clip(owed_j[k] / JOULES, 0.0, high)
+        deficits.append(program.unknown(np.zeros(cells + 1), high, begin))
     eased = program.unknown(np.zeros(cells), np.ones(cells), np.full(cells, 0.5))
     middle = [0.5 * (d[:-1] + d[1:]) for d in deficits]
     content = [share * road.w_prime_j / JOULES - d for share, d in zip(shares, middle, strict=True)]
@@ -332,6 +362,11 @@ class _Program:
                 "linear_solver": "mumps",
                 "tol": tolerance,
                 "max_iter": 1000,
+                # the two-pool law has a long flat tail: stop when nothing moves any more
+                "acceptable_tol": 1e-4,
+                "acceptable_constr_viol_tol": 1e-4,
+                "acceptable_obj_change_tol": 2e-7,
+                "acceptable_iter": 6,
                 "nlp_scaling_method": "none",
                 "mu_strategy": "adaptive",
             },
