@@ -191,11 +191,15 @@ def _refuse_too_few(task: _Task, segments: Segments) -> None:
 
 
 def _separable(solved: Solved) -> bool:
+    """Whether both intervals are narrow against what is usual for such a rider and such tyres.
+
+    Not against the value found: a low value by chance must not decide how it is treated.
+    """
     u = solved.system.unknowns
     crr = _one(solved, u.at("rolling"))
     cda = _one(solved, 0)
-    narrow = crr.half < WIDE_CRR * abs(crr.value) and cda.half < WIDE_CDA * abs(cda.value)
-    return narrow and crr.value > 0.0 and cda.value > 0.0
+    narrow = crr.half < WIDE_CRR * u.mean[u.at("rolling")] and cda.half < WIDE_CDA * cda.value
+    return bool(narrow and crr.value > 0.0)
 
 
 def _one(solved: Solved, index: int) -> Interval:

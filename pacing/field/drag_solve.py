@@ -15,6 +15,9 @@ from pacing.field.drag_wind import unknown_wind
 Array = NDArray[np.float64]
 
 STEPS_BY_ROUND = (3, 1, 1)
+BATCH, FEWEST_BATCHES = 8, 4
+SPENT_ON_SCATTER = 2.0
+"""Degrees of freedom that go into estimating the scatter itself."""
 
 
 @dataclass(frozen=True)
@@ -22,9 +25,11 @@ class Solved:
     """Unknowns ``theta`` (p,) with their ``covariance`` (p, p).
 
     ``scatter`` (p, p) is the part of it that comes from the scatter of the stretches;
+    ``bare`` (p, p) the covariance were the scatter known,
     ``freedom`` the degrees of freedom that scatter is known by. ``left_j`` (K,) is the work left
     over in each stretch, ``white`` (K,) the same with errors made independent and of size one;
-    ``log_sd`` (3,) the size of the causes of scatter.
+    ``log_sd`` (3,) the size of the causes of scatter; ``wandering`` by how much its variance was
+    raised since long batches of stretches err alike.
     """
 
     system: System
@@ -32,10 +37,12 @@ class Solved:
     covariance: Array
     scatter: Array
     freedom: float
+    bare: Array
     left_j: Array
     white: Array
     log_sd: Array
     band: Array
+    wandering: float = 1.0
 
     def budget(self, direction: Array) -> dict[str, float]:
         """Variance of ``direction``·theta by cause; they add up to the whole.
@@ -43,8 +50,9 @@ class Solved:
         The part of what is known beforehand is split by what each error known there adds.
         """
         u = self.system.unknowns
-        through = self.covariance @ direction
-        found = {"scatter": float(direction @ self.scatter @ direction)}
+        scatter = float(direction @ self.scatter @ direction)
+        through = self.bare @ direction
+        found = {"scatter": scatter}
         for cause in dict.fromkeys(u.cause):
             here = np.array([c == cause for c in u.cause])
             part = np.where(here, through, 0.0)
@@ -103,7 +111,36 @@ def solve_balance(system: System, *, typical: Array, theta: Array | None = None)
             pull=(u.mean - theta)[free],
             guess=log_sd,
         )
-    return _finish(system, theta, noise.band(log_sd), log_sd)
+    solved = _finish(system, theta, noise.band(log_sd), log_sd)
+    ratio, batches = _slow_wandering(solved)
+    if ratio <= 1.0:
+        return solved
+    log_sd = log_sd + 0.5 * np.log(ratio)
+    slower = _finish(system, solved.theta, noise.band(log_sd), log_sd)
+    return replace(slower, freedom=min(slower.freedom, float(batches)), wandering=ratio)
+
+
+def _slow_wandering(solved: Solved) -> tuple[float, int]:
+    """How much larger than by chance the sums over long batches are, and the number of batches.
+
+    Wind, road and posture change over minutes to hours: then neighbouring stretches err alike,
+    and so many of them are worth fewer. 1 unless chance would do it less than one time in twenty.
+    """
+    from scipy.stats import chi2
+
+    system = solved.system
+    squares: list[float] = []
+    for number in range(len(system.session.rides)):
+        white = solved.white[system.ride == number]
+        count = white.size // BATCH
+        if count >= 2:
+            parts = np.array_split(white, count)
+            squares += [float(part.sum() ** 2 / part.size) for part in parts]
+    if len(squares) < FEWEST_BATCHES:
+        return 1.0, 0
+    ratio = float(np.mean(squares))
+    limit = float(chi2.ppf(0.95, len(squares))) / len(squares)
+    return (ratio, len(squares)) if ratio > limit else (1.0, len(squares))
 
 
 def _step(
@@ -138,12 +175,17 @@ def _finish(system: System, theta: Array, band: Array, log_sd: Array) -> Solved:
     x = white[:, 1:]
     data = x.T @ x
     inverse = np.linalg.inv(data + precision)
+    scatter = inverse @ data @ inverse
+    freedom = max(len(system.segments) - float(np.trace(inverse @ data)), SPENT_ON_SCATTER + 1.0)
+    # The scatter was estimated from the same stretches, which makes it look too small.
+    more = freedom / (freedom - SPENT_ON_SCATTER) - 1.0
     return Solved(
         system=system,
         theta=theta,
-        covariance=_spread_out(inverse, free),
-        scatter=_spread_out(inverse @ data @ inverse, free),
-        freedom=max(len(system.segments) - float(np.trace(inverse @ data)), 1.0),
+        covariance=_spread_out(inverse + more * scatter, free),
+        scatter=_spread_out((1.0 + more) * scatter, free),
+        bare=_spread_out(inverse, free),
+        freedom=freedom - SPENT_ON_SCATTER,
         left_j=left,
         white=white[:, 0],
         log_sd=log_sd,

@@ -82,4 +82,4 @@ def _square(off_square: float, told: float) -> tuple[float, float]:
     weight /= weight.sum()
     second, fourth = float(weight @ _SCALES**2), float(weight @ _SCALES**4)
     # The square is skewed: it cannot be below 0, and reaches less far down than up.
-    return second, 0.8 * float(np.sqrt(max(3.0 * fourth - second**2, 0.0)))
+    return second, 0.6 * float(np.sqrt(max(3.0 * fourth - second**2, 0.0)))

@@ -118,7 +118,9 @@ class Motion:
     whole: NDArray[np.bool_]
 
 
-def loops(t: Truth, *, seconds: int = 1800, loop_m: float = 4200.0, relief_m: float = 35.0) -> Motion:
+def loops(
+    t: Truth, *, seconds: int = 1800, loop_m: float = 4200.0, relief_m: float = 35.0
+) -> Motion:
     """Laps of a hilly oval ridden harder uphill, second by second."""
     angle = np.linspace(0, 2 * np.pi, 2001)
     x, y = 1.4 * np.sin(angle), 0.7 * np.cos(angle)
@@ -144,7 +146,9 @@ def loops(t: Truth, *, seconds: int = 1800, loop_m: float = 4200.0, relief_m: fl
             g, h = np.interp(p, s, slope), np.interp(p, s, heading)
             held = force(t, speed, np.sin(h), np.cos(h), (blowing[0][:, k], blowing[1][:, k]))
             # the slope is rise over road here, so the climb takes m g sin = m g · slope
-            return (EFFICIENCY * power / np.maximum(speed, 2) - held - t.mass * GRAVITY * g) / inertia
+            return (
+                EFFICIENCY * power / np.maximum(speed, 2) - held - t.mass * GRAVITY * g
+            ) / inertia
 
         half = v + 0.5 * pull(v, at)
         after = np.maximum(v + pull(half, at + 0.25 * (v + half)), 1.5)
@@ -168,7 +172,7 @@ def runs(
     ways = (heading_deg, heading_deg + 180.0) if both_ways else (heading_deg,) * 2
     tilt = t.errors.tilt * t.random.standard_normal(t.cases)
     blowing = gusts(t, len(levels) * 2 * repeats * (seconds + 1))
-    for number, (level, way) in enumerate((l, w) for l in levels * repeats for w in ways):
+    for number, (level, way) in enumerate((each, w) for each in levels * repeats for w in ways):
         count = seconds + 1
         v = level * (1 + 0.01 * wandering(t.random, (t.cases, count), 8.0))
         here = slice(number * count, (number + 1) * count)
@@ -213,7 +217,9 @@ def coasts(t: Truth, *, count: int = 12, heading_deg: float = 50.0, fast: float 
             at = number * (seconds + 1) + k
             gust = (blowing[0][:, at], blowing[1][:, at])
 
-            def slowing(speed: Array, gust: tuple[Array, Array] = gust, way: float = way, up: Array = up) -> Array:
+            def slowing(
+                speed: Array, gust: tuple[Array, Array] = gust, way: float = way, up: Array = up
+            ) -> Array:
                 held = force(t, speed, np.sin(way), np.cos(way), gust)
                 return (held + t.mass * GRAVITY * up) / (t.mass + ROTATING_KG)
 
@@ -224,9 +230,15 @@ def coasts(t: Truth, *, count: int = 12, heading_deg: float = 50.0, fast: float 
         at = np.concatenate([np.zeros((t.cases, 1)), np.cumsum(mid, axis=1)], axis=1)
         parts.append(
             Motion(
-                v, at, at * np.sin(way), at * np.cos(way), np.full_like(v, way), up[:, None] * at,
-                np.zeros_like(mid), mid > 3.0,
-            )  # fmt: skip
+                v,
+                at,
+                at * np.sin(way),
+                at * np.cos(way),
+                np.full_like(v, way),
+                up[:, None] * at,
+                np.zeros_like(mid),
+                mid > 3.0,
+            )
         )
     return _joined(parts)
 
@@ -257,12 +269,16 @@ def recorded(t: Truth, motion: Motion, *, heights: bool = True) -> list[Ride]:
     speed = motion.v / t.scale[:, None] + e.speed_noise_m_s * normal(shape)
     height = t.height_scale[:, None] * motion.height + t.drift[:, None] * time
     height = height + e.wander_m * wandering(t.random, shape, 1500.0) + e.height_m * normal(shape)
-    power = np.maximum(motion.power / t.meter[:, None] * (1 + e.power_noise * normal(motion.power.shape)), 0)
+    power = np.maximum(
+        motion.power / t.meter[:, None] * (1 + e.power_noise * normal(motion.power.shape)), 0
+    )
     padded = np.pad(power, ((0, 0), (1, 1)), mode="edge")
     at_samples = 0.5 * (padded[:, 1:] + padded[:, :-1])
     # a sample stands for the steps on both sides only where both are part of one run
     broken = ~np.pad(motion.whole, ((0, 0), (1, 1)), constant_values=True)
-    at_samples = np.where(broken[:, 1:], padded[:, :-1], np.where(broken[:, :-1], padded[:, 1:], at_samples))
+    at_samples = np.where(
+        broken[:, 1:], padded[:, :-1], np.where(broken[:, :-1], padded[:, 1:], at_samples)
+    )
     nothing = np.full(shape[1], np.nan)
     return [
         _ride(time, at_samples[i], speed[i], height[i] if heights else nothing, motion, i, e.speed)
