@@ -10,6 +10,9 @@ from numpy.typing import NDArray
 
 from pacing.plan.marginal import Marginal, marginal
 from pacing.plan.places import places_of, readable_nodes
+from pacing.plan.position_brakes import hands_off_at_brakes
+from pacing.plan.position_moves import SwapCosts
+from pacing.plan.position_road import asked_in_pieces, moved_to
 from pacing.plan.problem import Cuts, Ride, ride
 from pacing.plan.refine import averaged, long_enough, merged_to
 from pacing.plan.rounding import long_pieces, rounded, split_for_steps
@@ -20,7 +23,7 @@ Array = NDArray[np.float64]
 
 REACH_M = 160.0
 """How far a boundary may be moved to a readable place."""
-MOST_TRIES = 5
+MOST_TRIES = 8
 SHORTEST_SLACK = 1.02
 """Cues are placed a little longer than they need be: rounding changes their times."""
 
@@ -42,33 +45,48 @@ def print_cues(race: Race, solution: Solution) -> Printed:
     ways = [_printed(race, solution, step_w)]
     long = int(np.sum(long_pieces(solution.ride, step_w=step_w)))
     most = race.plan.max_cues - min(long, race.plan.max_cues // 2)
-    if long and solution.ride.starts.size > most:
+    several = np.unique(asked_in_pieces(solution.ride.problem, solution.ride.starts)).size > 1
+    if long and solution.ride.starts.size > most and not several:
         ways.append(_printed(race, merged_to(solution, most), step_w))
-    return min(ways, key=lambda way: way.ride.motion.total_s)
+    best = min(ways, key=lambda way: way.ride.motion.total_s)
+    return best._replace(ride=hands_off_at_brakes(best.ride))
 
 
 def _printed(race: Race, solution: Solution, step_w: float) -> Printed:
     """Place the boundaries, solve again, round together; again where a cue came out too short."""
     readable = readable_nodes(race.course, places_of(race.course))
     wanted_s = SHORTEST_SLACK * race.plan.shortest_cue_s
-    for _ in range(MOST_TRIES):
+    for attempt in range(MOST_TRIES):
         starts = placed(solution, marginal(solution), readable, shortest_s=wanted_s)
         solution = _solved_at(solution, starts)
         cut = split_for_steps(solution.ride, readable, step_w=step_w, shortest_s=wanted_s)
         fits = starts.size < cut.size <= race.plan.max_cues
         rough = _cut_at(solution, cut) if fits else solution
         ridden = _merged(rounded(rough, step_w=step_w))
-        if ridden.starts.size == 1 or np.min(ridden.piece_time_s) >= race.plan.shortest_cue_s:
+        shortest_s = float(np.min(ridden.piece_time_s))
+        if ridden.starts.size == 1 or shortest_s >= race.plan.shortest_cue_s:
             break
-        solution = _solved_at(solution, long_enough(ridden, shortest_s=wanted_s))
+        if attempt < MOST_TRIES // 2:
+            wanted_s *= max(race.plan.shortest_cue_s / shortest_s, 1.0)
+            solution = _solved_at(solution, long_enough(ridden, shortest_s=wanted_s))
+        else:
+            solution = _solved_at(solution, _without_shortest(ridden))
     return Printed(ridden, solution.ride.motion.total_s)
+
+
+def _without_shortest(ridden: Ride) -> Cuts:
+    """Starts with the shortest piece joined to the neighbour whose power is nearer."""
+    k = int(np.argmin(ridden.piece_time_s))
+    beside = [j for j in (k - 1, k + 1) if 0 <= j < ridden.starts.size]
+    other = min(beside, key=lambda j: abs(float(ridden.power_w[j] - ridden.power_w[k])))
+    return np.delete(ridden.starts, max(k, other))
 
 
 def _solved_at(solution: Solution, starts: Cuts) -> Solution:
     """The optimum with pieces beginning elsewhere, from the powers now ridden there."""
     ridden = solution.ride
     power = averaged(ridden.target_w, ridden.motion.time_s, starts)
-    return solve(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
+    return solve(moved_to(ridden, starts), starts, power, guess_m_s=ridden.motion.speed_m_s)
 
 
 def _cut_at(solution: Solution, starts: Cuts) -> Solution:
@@ -82,7 +100,7 @@ def _cut_at(solution: Solution, starts: Cuts) -> Solution:
 
 def _merged(ridden: Ride) -> Ride:
     """Neighbouring cues of the same power and position as one."""
-    position = ridden.problem.road.position[ridden.starts]
+    position = asked_in_pieces(ridden.problem, ridden.starts)
     new = np.ones(ridden.starts.size, dtype=bool)
     new[1:] = (np.diff(ridden.power_w) != 0.0) | (np.diff(position) != 0)
     return ride(
@@ -103,6 +121,8 @@ def placed(solution: Solution, value: Marginal, readable: Cuts, *, shortest_s: f
     node_m = np.concatenate([[0.0], np.cumsum(ridden.problem.road.cell_m)])
     elapsed = ridden.motion.elapsed_s
     starts = ridden.starts.copy()
+    position = asked_in_pieces(ridden.problem, starts)
+    swap = SwapCosts(solution) if np.unique(position).size > 1 else None
     for k in range(1, starts.size):
         here = int(starts[k])
         after = elapsed[starts[k + 1]] if k + 1 < starts.size else elapsed[-1]
@@ -114,6 +134,10 @@ def placed(solution: Solution, value: Marginal, readable: Cuts, *, shortest_s: f
         if near.size == 0:
             continue
         step = float(ridden.power_w[k - 1] - ridden.power_w[k])
+        if swap is not None and position[k] != position[k - 1]:
+            costs = [swap.boundary_s(value, ridden, k, node) for node in near.tolist()]
+            starts[k] = near[int(np.argmin(costs))]
+            continue
         costs = [
             value.change_s(slice(here, node), step)
             if node > here

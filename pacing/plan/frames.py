@@ -8,6 +8,7 @@ import numpy as np
 import pandas as pd
 
 from pacing.plan.places import Place, words_at
+from pacing.plan.position_road import asked_in_pieces
 from pacing.plan.problem import Ride
 from pacing.race import Race
 from pacing.units import GRAVITY_M_S2, KMH_PER_M_S, clock_text
@@ -75,7 +76,8 @@ def cue_frame(race: Race, ridden: Ride, places: tuple[Place, ...]) -> pd.DataFra
     rise = np.diff(course.elevation_m[edges])
     words = [words_at(course, places, at, within_m=WITHIN_M) for at in from_m]
     words[0] = "start"
-    names = [race.rider.positions[i].name for i in ridden.problem.road.position[edges[:-1]]]
+    asked = asked_in_pieces(ridden.problem, ridden.starts)
+    names = [race.rider.positions[i].name for i in asked]
     shown = ridden.power_w / race.rider.power_meter_factor
     return pd.DataFrame(
         {

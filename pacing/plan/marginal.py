@@ -7,8 +7,8 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from pacing.motion.slopes import cell_end_slopes, time_adjoint
-from pacing.plan.balance import prices
+from pacing.motion.slopes import CellEndSlopes, cell_end_slopes, time_adjoint
+from pacing.plan.balance import Prices, prices
 from pacing.plan.problem import Ride, ride
 from pacing.plan.solve import CROSSING_W, HELD_W, Solution
 
@@ -53,8 +53,16 @@ def marginal(solution: Solution) -> Marginal:
     return Marginal(up, down, curvature(ridden))
 
 
-def reduced_slope(ridden: Ride, multipliers_s_per_j: Array) -> Array:
-    """Slope of time less priced W′ in the power of each cell by itself (N,), s/W."""
+class Priced(NamedTuple):
+    """The Lagrangian's multipliers of motion (N,), and what power and time cost in each cell."""
+
+    adjoint: Array
+    price: Prices
+    ends: CellEndSlopes
+
+
+def priced(ridden: Ride, multipliers_s_per_j: Array) -> Priced:
+    """Time less priced W′, followed back through the motion by one adjoint solve."""
     problem, motion = ridden.problem, ridden.motion
     price = prices(
         problem.law,
@@ -71,7 +79,12 @@ def reduced_slope(ridden: Ride, multipliers_s_per_j: Array) -> Array:
     weight = 1.0 - price.per_s
     per_energy = weight * ends.time_to - price.per_w * ends.power_to
     per_energy[:-1] += (weight * ends.time_from - price.per_w * ends.power_from)[1:]
-    adjoint = time_adjoint(ends, ridden.cell_slopes, per_energy=per_energy)
+    return Priced(time_adjoint(ends, ridden.cell_slopes, per_energy=per_energy), price, ends)
+
+
+def reduced_slope(ridden: Ride, multipliers_s_per_j: Array) -> Array:
+    """Slope of time less priced W′ in the power of each cell by itself (N,), s/W."""
+    adjoint, price, ends = priced(ridden, multipliers_s_per_j)
     return -price.per_w * ends.power_target + adjoint * ridden.cell_slopes.power
 
 

@@ -13,6 +13,8 @@ from pacing.motion.road import Road
 from pacing.plan.approach import with_approaches
 from pacing.plan.cut import Cut, cheapest_cuts
 from pacing.plan.free import FreeRide, ride_free
+from pacing.plan.position_choice import Choice, choose_positions
+from pacing.plan.position_road import sitting_as
 from pacing.plan.prepare import Prepared, prepare, settled
 from pacing.plan.problem import Problem, Ride
 from pacing.plan.refine import refined
@@ -47,6 +49,7 @@ class Optimum:
     evaluations: int
     free_seconds: float
     evenness_s: float
+    choice: Choice
 
 
 class _Counts:
@@ -65,6 +68,17 @@ class _Counts:
         self.evaluations += solution.evaluations
         return solution
 
+    def choose(self, prepared: Prepared, solution: Solution) -> Choice:
+        plan = prepared.race.plan
+        choice = choose_positions(
+            solution,
+            most_pieces=plan.max_cues,
+            shortest_s=SHORTEST_SLACK * plan.shortest_cue_s,
+        )
+        self.solves += choice.solves
+        self.iterations += choice.iterations
+        return choice
+
     def ride_free(self, problem: Problem, start: Ride) -> FreeRide:
         began = perf_counter()
         free = ride_free(problem, start)
@@ -79,18 +93,18 @@ def optimise(race: Race) -> Optimum:
     """
     counts = _Counts()
     prepared = prepare(race)
-    refuse_stall(prepared.constant)
     plain = _by_terrain(prepared, counts)
-    refuse_stall(plain.ride)
     first = counts.ride_free(prepared.problem, plain.ride)
     prepared = settled(prepared, min(first.ride, plain.ride, key=_time_s))
-    solution = _pieces(prepared, plain, first, counts)
+    choice = counts.choose(prepared, _pieces(prepared, plain, first, counts))
+    solution = choice.solution
     for _ in range(MOST_SETTLINGS):
         again = settled(prepared, solution.ride)
         if again is prepared:
             break
         prepared = again
         problem = replace(prepared.problem, road=_with_limits(prepared, solution))
+        problem = sitting_as(problem, solution.ride.problem)
         cut = Cut(solution.ride.starts, solution.ride.power_w)
         solution = counts.solve(problem, cut, solution.ride.motion.speed_m_s)
     refuse_stall(solution.ride)
@@ -98,7 +112,8 @@ def optimise(race: Race) -> Optimum:
     fastest = solve(
         solution.ride.problem, *cut, guess_m_s=solution.ride.motion.speed_m_s, evenness=0.0
     )
-    second = counts.ride_free(prepared.problem, solution.ride)
+    ridden_so = sitting_as(prepared.problem, solution.ride.problem)
+    second = counts.ride_free(ridden_so, solution.ride)
     times = (first.ride.motion.total_s, second.ride.motion.total_s)
     best = min((first.ride, second.ride, solution.ride), key=lambda ridden: ridden.motion.total_s)
     return Optimum(
@@ -111,6 +126,7 @@ def optimise(race: Race) -> Optimum:
         evaluations=counts.evaluations,
         free_seconds=counts.free_seconds,
         evenness_s=max(0.0, solution.ride.motion.total_s - fastest.ride.motion.total_s),
+        choice=choice,
     )
 
 
@@ -125,8 +141,11 @@ def _by_terrain(prepared: Prepared, counts: _Counts) -> Solution:
         most_pieces=plan.max_cues,
         shortest_m=SHORTEST_SLACK * plan.shortest_cue_s,
     )
-    cut = Cut(nodes[:-1], np.full(nodes.size - 1, constant.power_w[-1]))
-    return counts.solve(prepared.problem, cut, motion.speed_m_s)
+    starts = nodes[:-1]
+    walking = road.walking_power_w()
+    power = np.maximum(constant.power_w[-1], np.maximum.reduceat(walking, starts))
+    power = np.minimum(power, prepared.problem.max_power_w)
+    return counts.solve(prepared.problem, Cut(starts, power), motion.speed_m_s)
 
 
 def _pieces(prepared: Prepared, plain: Solution, free: FreeRide, counts: _Counts) -> Solution:
@@ -136,19 +155,20 @@ def _pieces(prepared: Prepared, plain: Solution, free: FreeRide, counts: _Counts
     """
     plan, problem = prepared.race.plan, prepared.problem
     shortest = SHORTEST_SLACK * plan.shortest_cue_s
+    by_terrain = Cut(plain.ride.starts, plain.ride.power_w)
     guess = plain.ride.motion.speed_m_s
-    cuts = [Cut(plain.ride.starts, plain.ride.power_w)]
-    if _time_s(free.ride) < _time_s(plain.ride):
+    tried = [counts.solve(problem, by_terrain, guess)]
+    if _time_s(free.ride) < _time_s(tried[0].ride):
         problem = with_approaches(problem, free.ride)
-        guess = free.ride.motion.speed_m_s
         priced = cheapest_cuts(
             free.priced,
             most_pieces=plan.max_cues,
             shortest_s=shortest,
             levels_w=_levels_w(problem),
         )
-        cuts.append(priced)
-    best = min((counts.solve(problem, cut, guess) for cut in cuts), key=lambda s: _time_s(s.ride))
+        guess = free.ride.motion.speed_m_s
+        tried += [counts.solve(problem, cut, guess) for cut in (by_terrain, priced)]
+    best = min(tried, key=lambda solution: _time_s(solution.ride))
     refinement = refined(
         best, most_pieces=plan.max_cues, shortest_s=shortest, rounds=REFINING_ROUNDS
     )

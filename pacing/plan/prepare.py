@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.motion.road import Road, road_for
+from pacing.plan.position_road import in_each_position
 from pacing.plan.problem import Problem, Ride
 from pacing.plan.solve import best_constant
 from pacing.race import Race
@@ -78,7 +79,10 @@ def planned_critical_power_w(race: Race, time_s: float) -> float:
 
 def _prepared(race: Race, clock_s: Array, critical_power_w: float) -> Prepared:
     problem = problem_for(race, road_for(race, clock_s=clock_s), critical_power_w)
-    return Prepared(race, problem, best_constant(problem), clock_s)
+    constants = [best_constant(ridden) for ridden in in_each_position(race, problem)]
+    # one position all the way: the fastest the rider gets through in
+    best = min(constants, key=lambda c: (c.motion.stalled_cells.size > 0, c.motion.total_s))
+    return Prepared(race, best.problem, best, clock_s)
 
 
 def problem_for(race: Race, road: Road, critical_power_w: float) -> Problem:

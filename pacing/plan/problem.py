@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,6 +24,9 @@ from pacing.plan.balance import (
 )
 from pacing.rider.budget import RecoveryLaw
 
+if TYPE_CHECKING:
+    from pacing.plan.position_road import Sitting
+
 Array = NDArray[np.float64]
 Cuts = NDArray[np.intp]
 
@@ -33,7 +37,8 @@ class Problem:
 
     Per cell (N,): ``critical_power_w`` as planned there and ``power_share`` of the position.
     ``peak_power_w`` is None unless the limit falls with W′ (three-parameter form).
-    ``reserve_everywhere`` False checks the reserve at the finish alone.
+    ``reserve_everywhere`` False checks the reserve at the finish alone. ``sitting`` is None for
+    a rider with one position.
     """
 
     road: Road
@@ -49,6 +54,7 @@ class Problem:
     peak_power_w: float | None = None
     w_start_j: float | None = None
     reserve_everywhere: bool = True
+    sitting: Sitting | None = None
 
     @property
     def at_critical_w(self) -> Array:

@@ -115,7 +115,15 @@ def _position(position: dict[str, Any], number: int, origins: Origins) -> Positi
     except UnusableInputError as problem:
         path = ("rider", "positions", number, "cda_m2")
         raise origins.error(path, problem.found, expected=problem.expected) from None
-    return Position(position["name"], drag_area, position["power_share"])
+    slowest, fastest = position["min_speed_kmh"], position["max_speed_kmh"]
+    return Position(
+        position["name"],
+        drag_area,
+        position["power_share"],
+        min_speed_m_s=None if slowest is None else slowest / KMH_PER_M_S,
+        max_speed_m_s=None if fastest is None else fastest / KMH_PER_M_S,
+        longest_s=position["longest_s"],
+    )
 
 
 def _bike(bike: dict[str, Any], origins: Origins) -> Bike:

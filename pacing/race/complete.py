@@ -49,6 +49,13 @@ def _positions(rider: dict[str, Any], checked: Checked) -> None:
                 expected="a name of its own for every position",
             )
         names.append(position["name"])
+        slowest, fastest = position["min_speed_kmh"], position["max_speed_kmh"]
+        if slowest is not None and fastest is not None and fastest <= slowest:
+            raise checked.origins.error(
+                ("rider", "positions", number, "max_speed_kmh"),
+                f"{fastest:g} with min_speed_kmh {slowest:g}",
+                expected=f"more than {slowest:g}",
+            )
     tested = rider["tested_position"] or names[0]
     if tested not in names:
         raise checked.origins.error(

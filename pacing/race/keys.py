@@ -29,11 +29,6 @@ class NotYet(NamedTuple):
 
 NOT_YET: tuple[NotYet, ...] = (
     NotYet(
-        "rider.positions[1]",
-        None,
-        "a second position is refused: choosing between positions along the course is not built",
-    ),
-    NotYet(
         "plan.risk_pct",
         None,
         "planning to a stated risk of running out of W′ is not built",

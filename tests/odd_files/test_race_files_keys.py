@@ -353,13 +353,6 @@ TOGETHER = {
 }
 
 NOT_BUILT = {
-    "a second position": (
-        "[bike]",
-        '[[rider.positions]]\nname = "hoods"\ncda_m2 = 0.3\n[bike]',
-        13,
-        "rider.positions[1]: a second position is refused: choosing between positions along the "
-        "course is not built. Leave it out for now.",
-    ),
     "a stated risk": (
         "[bike]",
         "[plan]\nrisk_pct = 10\n[bike]",

@@ -1,0 +1,151 @@
+"""Which position each piece is ridden in, chosen with its power.
+
+The adjoint says which changes promise to pay: a piece in another position, a stretch cut out of
+a piece, a boundary moved. The most promising are solved exactly, from the powers at hand, and
+kept if they gain, until none does.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from itertools import combinations
+
+import numpy as np
+
+from pacing.plan.position_moves import Move, applied, flipped, flips, slides, stretches
+from pacing.plan.position_prices import merit_s, outside_s
+from pacing.plan.position_road import asked_in_pieces
+from pacing.plan.solve import Solution, solve
+
+LEAST_GAIN_S = 2e-3
+HOPE_SHARE = 2e-4
+"""What promises to lose less than this share of the time is still tried: prices are local."""
+MOST_TRIES = 8
+MOST_ROUNDS = 40
+PIECES_IN_PAIRS = 8
+ALLOWED_S = 0.5
+"""Seconds outside a position's bounds that are let pass: a cell or so at a boundary."""
+
+
+@dataclass(frozen=True)
+class Choice:
+    """The solution with positions chosen, and what the best single position would have taken.
+
+    ``single_s`` is None where no position may be used all the way.
+    """
+
+    solution: Solution
+    single_s: float | None
+    solves: int
+    iterations: int
+
+
+def choose_positions(
+    solution: Solution, *, most_pieces: int, shortest_s: float, cut: bool = True
+) -> Choice:
+    """Choose a position for every piece of a solution ridden in one position all the way.
+
+    Pieces are cut anew where that pays (``cut``), at most ``most_pieces`` of at least
+    ``shortest_s`` each. A problem without positions to choose from comes back as it is.
+    """
+    if solution.ride.problem.sitting is None:
+        return Choice(solution, solution.ride.motion.total_s, 0, 0)
+    search = _Search(solution)
+    singles = [solution, *search.solved(_uniform(solution))]
+    allowed = [s for s in singles if outside_s(s.ride) <= ALLOWED_S]
+    search.best = min(singles, key=lambda s: merit_s(s.ride))
+    search.try_all(_greedy(search.best))
+    for _ in range(MOST_ROUNDS):
+        moves = flips(search.best)
+        if cut:
+            moves += stretches(search.best, most_pieces=most_pieces, shortest_s=shortest_s)
+            moves += slides(search.best, shortest_s=shortest_s)
+        if search.improves(moves, MOST_TRIES):
+            continue
+        small = search.best.ride.starts.size <= PIECES_IN_PAIRS
+        if not small or not search.improves(_pairs(search.best), 3 * MOST_TRIES):
+            break
+    single_s = min((s.ride.motion.total_s for s in allowed), default=None)
+    return Choice(search.best, single_s, search.solves, search.iterations)
+
+
+class _Search:
+    """The best solution so far, and what finding it took."""
+
+    def __init__(self, solution: Solution) -> None:
+        self.best = solution
+        self.solves = self.iterations = 0
+
+    def solve(self, move: Move) -> Solution:
+        ridden = self.best.ride
+        found = solve(
+            applied(ridden.problem, move),
+            move.starts,
+            move.power_w,
+            guess_m_s=ridden.motion.speed_m_s,
+        )
+        self.solves += 1
+        self.iterations += found.iterations
+        return found
+
+    def solved(self, moves: Iterable[Move]) -> list[Solution]:
+        return [self.solve(move) for move in moves]
+
+    def try_all(self, moves: Iterable[Move]) -> None:
+        for move in moves:
+            self._kept(move)
+
+    def improves(self, moves: list[Move], most: int) -> bool:
+        """Solve the most promising of the moves until one gains."""
+        hopeless = -HOPE_SHARE * self.best.ride.motion.total_s
+        hopeful = sorted(
+            (m for m in moves if m.gain_s > hopeless), key=lambda m: m.gain_s, reverse=True
+        )
+        return any(self._kept(move) for move in hopeful[:most])
+
+    def _kept(self, move: Move) -> bool:
+        found = self.solve(move)
+        if merit_s(self.best.ride) - merit_s(found.ride) <= LEAST_GAIN_S:
+            return False
+        self.best = found
+        return True
+
+
+def _uniform(solution: Solution) -> list[Move]:
+    """Every other position, all the way."""
+    problem, starts = solution.ride.problem, solution.ride.starts
+    asked = asked_in_pieces(problem, starts)
+    assert problem.sitting is not None
+    others = [p for p in range(len(problem.sitting.positions)) if p != asked[0]]
+    pieces = tuple(range(starts.size))
+    return [flipped(solution, pieces, (p,) * starts.size) for p in others]
+
+
+def _greedy(solution: Solution) -> list[Move]:
+    """All flips that promise to gain by themselves, together."""
+    asked = asked_in_pieces(solution.ride.problem, solution.ride.starts)
+    chosen: dict[int, Move] = {}
+    for move in flips(solution):
+        piece = int(np.flatnonzero(move.asked != asked)[0])
+        if move.gain_s > max(0.0, chosen[piece].gain_s if piece in chosen else 0.0):
+            chosen[piece] = move
+    if len(chosen) < 2:
+        return []
+    pieces = tuple(chosen)
+    return [flipped(solution, pieces, tuple(int(chosen[k].asked[k]) for k in pieces))]
+
+
+def _pairs(solution: Solution) -> list[Move]:
+    """Every two pieces in other positions."""
+    problem, starts = solution.ride.problem, solution.ride.starts
+    asked = asked_in_pieces(problem, starts)
+    assert problem.sitting is not None
+    count = len(problem.sitting.positions)
+    return [
+        flipped(solution, (i, j), (p, q))
+        for i, j in combinations(range(starts.size), 2)
+        for p in range(count)
+        for q in range(count)
+        if p != asked[i] and q != asked[j]
+    ]
