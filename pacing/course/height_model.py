@@ -153,7 +153,10 @@ def _system(
 
 
 def _cost(sums: Sums, model: HeightModel) -> float:
-    """Minus the log of the marginal likelihood, constants of the data left out."""
+    """Minus the log of the marginal likelihood, constants of the data left out.
+
+    Source: wahba-1985, the marginal likelihood of a smoothing spline, with a second error.
+    """
     bands, moment, constant = _system(sums, model)
     try:
         factor = cholesky_banded(bands, lower=True, overwrite_ab=True, check_finite=False)

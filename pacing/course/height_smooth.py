@@ -71,11 +71,11 @@ def smooth_points(
         nodes_m = nodes_m[spare:-spare]
         kept = kept.chosen((kept.at_m >= nodes_m[0]) & (kept.at_m <= nodes_m[-1]))
     model, share = judged.model, 1.0
-    if judged.source == STEPPED:
-        step = step_m or 1.0
-        if step >= SURE_STEP_M or not flickers(kept):
-            kept, model = _between_steps(kept, nodes_m, step)
-            share = MORE_AT_CHANGES
+    noise = float(np.hypot(model.error_m, model.white_m))
+    step = step_m or 1.0
+    if judged.source == STEPPED and (step >= SURE_STEP_M or not flickers(kept)):
+        kept, model = _between_steps(kept, nodes_m, step)
+        noise, share = step / 12**0.5, MORE_AT_CHANGES
     sums = sums_of(*kept, nodes_m)
     local = None
     if judged.source == TERRAIN_GRID:
@@ -90,7 +90,6 @@ def smooth_points(
         road = fixed_smoothing(sums, smoothing_m)
         away = gradients_pct(road - likeliest, sums.step_m)
         error = float(np.hypot(error, np.sqrt(np.mean(away**2))))
-    noise = float(np.hypot(model.error_m, model.white_m))
     return SmoothedHeights(road, judged, noise, error, smoothing_m, repairs)
 
 
