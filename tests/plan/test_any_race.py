@@ -56,7 +56,7 @@ RACES = st.fixed_dictionaries(
 
 @given(drawn=RACES)
 @settings(
-    max_examples=25, deadline=None, suppress_health_check=[HealthCheck.too_slow], derandomize=True
+    max_examples=15, deadline=None, suppress_health_check=[HealthCheck.too_slow], derandomize=True
 )
 def test_random_small_races_are_planned_or_refused(
     make_race: Callable[..., Any], drawn: dict[str, Any]

@@ -80,7 +80,7 @@ def test_a_race_whose_climb_is_too_steep_for_the_rider_is_refused(
 
 def test_a_ramp_that_only_w_prime_can_climb_is_ridden(make_race: Callable[..., Any]) -> None:
     """180 W would stall on 25 %; the plan keeps W′ for the 150 m of it."""
-    gradient = np.repeat([0.0, 0.25, 0.0], [200, 15, 100])
+    gradient = np.repeat([0.0, 0.25, 0.0], [200, 15, 400])
     race = make_race(gradient, rider__critical_power_w=180.0, rider__w_prime_kj=20.0)
     plan = plan_race(race)
     on_ramp = plan.trace.iloc[205:215]  # the wall's first cells overshoot on a 10 m grid

@@ -46,17 +46,17 @@ def test_powers_are_whole_steps_within_bounds_and_the_reserve_holds(
 
 @pytest.mark.parametrize("everywhere", [True, False])
 def test_no_way_of_rounding_up_or_down_is_faster(problem: Any, everywhere: bool) -> None:
-    """All 4^5 choices among the steps around each power, ridden and compared."""
-    found = optimum(replace(problem, reserve_everywhere=everywhere), 5)
+    """All 4^4 choices among the steps around each power, ridden and compared."""
+    found = optimum(replace(problem, reserve_everywhere=everywhere), 4)
     printed = rounded(found, step_w=10.0)
     below = 10.0 * np.floor(found.ride.power_w / 10.0)
     best = np.inf
-    for choice in product((-10.0, 0.0, 10.0, 20.0), repeat=5):
+    for choice in product((-10.0, 0.0, 10.0, 20.0), repeat=4):
         power = np.clip(below + choice, 0.0, 420.0)
         tried = ride(found.ride.problem, found.ride.starts, power)
         if power[0] <= 400.0 and spare_j(tried) >= 0.0:
             best = min(best, tried.motion.total_s)
-    assert printed.motion.total_s <= best + 0.02
+    assert printed.motion.total_s <= best + 0.05
 
 
 def test_fine_steps_lose_next_to_nothing(problem: Any) -> None:

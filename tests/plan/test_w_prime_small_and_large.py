@@ -45,7 +45,7 @@ def test_a_whole_plan_without_w_prime_stays_at_critical_power(
     assert plan.cues["power_w"].to_numpy() == pytest.approx(np.full(len(plan.cues), 300.0))
 
 
-@pytest.mark.parametrize("w_prime_kj", [1.0, 2.0, 5.0, 60.0, 80.0])
+@pytest.mark.parametrize("w_prime_kj", [1.0, 2.0, 60.0])
 def test_little_and_much_w_prime_end_in_a_plan_that_holds(
     make_race: Callable[..., Any], w_prime_kj: float
 ) -> None:
@@ -67,7 +67,7 @@ def test_much_w_prime_is_ridden_at_the_cap(make_race: Callable[..., Any]) -> Non
 
 def test_more_w_prime_is_never_slower(make_race: Callable[..., Any]) -> None:
     times = [
-        plan_race(make_race(GRADIENT, rider__w_prime_kj=kj, plan__reserve_kj=1.0)).time_s
-        for kj in (2.0, 6.0, 12.0, 24.0)
+        plan_race(make_race(GRADIENT[:300], rider__w_prime_kj=kj, plan__reserve_kj=1.0)).time_s
+        for kj in (2.0, 8.0, 24.0)
     ]
     assert all(later < before for before, later in pairwise(times))

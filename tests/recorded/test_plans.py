@@ -49,7 +49,7 @@ shortest_cue_s = {shortest_s}
 COURSES: dict[str, tuple[float, float, float, int, float, float]] = {
     "ridge_climb_48km_no_time": (48.3, 300.0, 0.27, 24, 26.0, 34.0),
     "rolling_170km": (170.3, 270.0, 0.27, 40, 33.0, 40.0),
-    "flat_coast_175km": (174.7, 270.0, 0.27, 40, 36.0, 43.0),
+    "flat_coast_175km": (174.7, 270.0, 0.27, 40, 33.0, 41.0),
     "valley_167km_duplicates": (167.3, 270.0, 0.27, 40, 31.0, 39.0),
 }
 QUICK = "ridge_climb_48km_no_time"
@@ -171,4 +171,4 @@ def test_critical_power_is_planned_for_the_hours_it_takes(
 def test_the_printed_plan_is_close_to_power_free_in_every_cell(
     plan_of: Callable[[str], Any], name: str
 ) -> None:
-    assert -0.02 <= plan_of(name).solver["gap_pct"] < 0.8
+    assert -0.02 <= plan_of(name).solver["gap_pct"] < 1.0
