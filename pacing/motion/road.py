@@ -21,6 +21,7 @@ Array = NDArray[np.float64]
 
 TRACTION_SHARE = 0.25
 """Largest driving force at the wheel over the total weight; common practice, no source."""
+WALKING_M_S = 1.6
 
 
 @dataclass(frozen=True)
@@ -100,6 +101,12 @@ class Road:
         )
         force = self.steady_n[cell] + self.bearing_n_per_m_s * float(speed_m_s) + float(air[0])
         return float(force * float(speed_m_s) / self.efficiency)
+
+    def walking_power_w(self) -> Array:
+        """Rider power (N,) that holds the slowest speed a bicycle is ridden at, with a margin."""
+        speed = np.full(self.cell_m.size, WALKING_M_S)
+        force, _ = self.resistance_n_and_slope(speed)
+        return np.asarray(np.maximum(force, 0.0) * speed / self.efficiency)
 
 
 def road_for(

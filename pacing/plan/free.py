@@ -74,7 +74,7 @@ def _blocks(problem: Problem, ridden: Ride) -> _Blocks:
     own = float(np.max(road.limit_m_s))
     near = (road.limit_m_s < 0.999 * own) & (ridden.motion.speed_m_s > 0.97 * road.limit_m_s)
     near_cell = near[1:] | near[:-1]
-    fine = np.convolve(near_cell, np.ones(5), mode="same") > 0
+    fine = np.convolve(near_cell, np.ones(5), mode="full")[2:-2] > 0
     elapsed = ridden.motion.elapsed_s
     fine[elapsed[1:] < 40.0] = True
     per_block = max(1, round(COARSEST_M / float(road.cell_m[0])))
