@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from pacing.plan.position_prices import outside_s
 from pacing.plan.problem import Ride
 from pacing.race import Race
 from pacing.units import KMH_PER_M_S
@@ -11,6 +12,8 @@ from pacing.units import KMH_PER_M_S
 FAST_DESCENT_KMH = 55.0
 BELIEVABLE_GAIN_PCT = 4.0
 YAW_SHARE_PCT = 2.0
+LET_PASS_S = 5.0
+"""Seconds outside a position's bounds at the edges of cues that need no word."""
 
 
 def plan_cautions(race: Race, ridden: Ride, constant: Ride) -> tuple[str, ...]:
@@ -18,6 +21,7 @@ def plan_cautions(race: Race, ridden: Ride, constant: Ride) -> tuple[str, ...]:
     found = list(race.cautions)
     found += _fast_descents(race, ridden)
     found += _yaw_beyond_tables(race, ridden)
+    found += _outside_positions(ridden)
     gain = 100.0 * (1.0 - ridden.motion.total_s / constant.motion.total_s)
     if gain > BELIEVABLE_GAIN_PCT:
         found.append(
@@ -55,4 +59,17 @@ def _yaw_beyond_tables(race: Race, ridden: Ride) -> list[str]:
     return [
         f"On {share:.0f} % of the way the wind comes from more than {last:.0f}°, the last yaw of "
         "the drag table; the last value is used there."
+    ]
+
+
+def _outside_positions(ridden: Ride) -> list[str]:
+    if ridden.problem.sitting is None:
+        return []
+    seconds = outside_s(ridden)
+    if seconds <= LET_PASS_S:
+        return []
+    return [
+        f"For {seconds:.0f} s the plan asks for a position outside the speeds or the time given "
+        "for it: no other choice was found. Check min_speed_kmh, max_speed_kmh and longest_s of "
+        "rider.positions, or allow more cues."
     ]

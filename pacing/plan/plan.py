@@ -11,6 +11,7 @@ from typing import Any
 import pandas as pd
 
 from pacing.plan.cautions import plan_cautions
+from pacing.plan.crossover import positions_report
 from pacing.plan.cues import Printed, print_cues
 from pacing.plan.frames import cue_frame, model_inputs, piece_frame, split_frame, trace_frame
 from pacing.plan.optimum import Optimum, optimise
@@ -25,7 +26,8 @@ class Plan:
 
     ``cues``, ``pieces``, ``trace`` and ``splits`` are DataFrames; ``time_s`` is the time of
     riding the cues exactly as printed. ``constant`` holds ``power_w`` and ``time_s`` of the
-    highest constant target that keeps the same reserve under the same limits.
+    highest constant target that keeps the same reserve under the same limits. ``positions`` says
+    when another position is faster and what changing is worth; None for a rider with one.
     """
 
     race: Race
@@ -39,6 +41,7 @@ class Plan:
     sensitivities: Mapping[str, Any] | None
     cautions: tuple[str, ...]
     inputs: Mapping[str, Any]
+    positions: Mapping[str, Any] | None = None
 
     def to_json_dict(self) -> dict[str, Any]:
         """The whole result as plain lists, dicts and numbers (schema ``plan/1``)."""
@@ -53,6 +56,7 @@ class Plan:
             "solver": dict(self.solver),
             "cautions": list(self.cautions),
             "inputs": dict(self.inputs),
+            **({} if self.positions is None else {"positions": dict(self.positions)}),
         }
 
     def save(self, folder: Path | str) -> None:
@@ -101,6 +105,7 @@ def _plan(found: Optimum, printed: Printed, seconds: float) -> Plan:
         sensitivities=None,
         cautions=plan_cautions(race, ridden, constant),
         inputs={**race.inputs, "model": model_inputs(race, ridden)},
+        positions=positions_report(race, ridden, found.choice),
     )
 
 

@@ -30,15 +30,22 @@ ALLOWED_S = 0.5
 
 @dataclass(frozen=True)
 class Choice:
-    """The solution with positions chosen, and what the best single position would have taken.
+    """The solution with positions chosen, and what each single position would have taken.
 
-    ``single_s`` is None where no position may be used all the way.
+    ``singles`` are the solutions in one position all the way, in the rider's order; ``single``
+    is the fastest that may be ridden so, None where there is none.
     """
 
     solution: Solution
-    single_s: float | None
+    singles: tuple[Solution, ...]
+    single: int | None
     solves: int
     iterations: int
+
+    @property
+    def single_s(self) -> float | None:
+        """Time in the best single position."""
+        return None if self.single is None else self.singles[self.single].ride.motion.total_s
 
 
 def choose_positions(
@@ -50,10 +57,11 @@ def choose_positions(
     ``shortest_s`` each. A problem without positions to choose from comes back as it is.
     """
     if solution.ride.problem.sitting is None:
-        return Choice(solution, solution.ride.motion.total_s, 0, 0)
+        return Choice(solution, (solution,), 0, 0, 0)
     search = _Search(solution)
     singles = [solution, *search.solved(_uniform(solution))]
-    allowed = [s for s in singles if outside_s(s.ride) <= ALLOWED_S]
+    singles.sort(key=lambda s: int(asked_in_pieces(s.ride.problem, s.ride.starts)[0]))
+    allowed = [k for k, s in enumerate(singles) if outside_s(s.ride) <= ALLOWED_S]
     search.best = min(singles, key=lambda s: merit_s(s.ride))
     search.try_all(_greedy(search.best))
     for _ in range(MOST_ROUNDS):
@@ -66,8 +74,8 @@ def choose_positions(
         small = search.best.ride.starts.size <= PIECES_IN_PAIRS
         if not small or not search.improves(_pairs(search.best), 3 * MOST_TRIES):
             break
-    single_s = min((s.ride.motion.total_s for s in allowed), default=None)
-    return Choice(search.best, single_s, search.solves, search.iterations)
+    single = min(allowed, key=lambda k: singles[k].ride.motion.total_s, default=None)
+    return Choice(search.best, tuple(singles), single, search.solves, search.iterations)
 
 
 class _Search:

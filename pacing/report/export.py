@@ -12,7 +12,7 @@ from xml.sax.saxutils import escape
 
 import numpy as np
 
-from pacing.report import figures, sheet, words
+from pacing.report import figures, position_picture, sheet, words
 from pacing.report.output_set import output_set
 from pacing.report.strict_json import json_text
 
@@ -72,6 +72,8 @@ def write_plan(plan: Plan, folder: Path) -> None:
         sheet.save_preview(plan, room / "cue-sheet.png")
         figures.save_profile(plan, room / "profile.png")
         figures.save_map(plan, room / "map.png")
+        if plan.positions is not None:
+            position_picture.save_positions(plan, room / "positions.png")
 
 
 def plan_json(plan: Plan) -> str:

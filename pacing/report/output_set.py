@@ -36,7 +36,7 @@ PLAN_OUTPUT = OutputKind(
     names=frozenset(
         {
             "plan.json", "cues.csv", "trace.csv", "cue-sheet.pdf", "cue-sheet.png",
-            "profile.png", "map.png", "cues.gpx", "report.html",
+            "profile.png", "map.png", "cues.gpx", "positions.png", "report.html",
         }
     ),
     proof="plan.json",

@@ -29,6 +29,7 @@ def plan_text(plan: Plan) -> str:
         _wrapped(title(plan, units)),
         "\n".join(_wrapped(sentence) for sentence in summary(plan, units)),
         _cues(plan, units),
+        "\n".join(_wrapped(sentence) for sentence in positions(plan, units)),
         _splits(plan, units),
         _slow_places(plan, units),
         "\n".join(_wrapped(caution, "- ", "  ") for caution in cautions(plan)),
@@ -105,6 +106,35 @@ def lowest(plan: Plan, units: Units) -> str:
         f" {words.number(left_kj, 1)} kJ, of which"
         f" {words.number(plan.race.plan.reserve_j / 1000, 1)} kJ is the reserve."
     )
+
+
+def positions(plan: Plan, units: Units) -> tuple[str, ...]:
+    """Where sitting up is faster and what changing is worth; nothing with one position."""
+    found = plan.positions
+    if found is None:
+        return ()
+    lower, upper = words.filled(found["lower"]), words.filled(found["upper"])
+    lines = [f"At the same effort {upper} is faster nowhere."]
+    if found["crossover_kmh"] is not None:
+        lines = [
+            f"At an effort of {words.number(found['effort_w'])} W, in calm air, {upper} is faster"
+            f" than {lower} below {words.speed(found['crossover_kmh'] / 3.6, units)}"
+            f" {units.speed}, on gradients above"
+            f" {words.number(found['crossover_gradient_pct'], 1)} %."
+        ]
+    if found["worth_s"] is not None and found["changes"]:
+        lines.append(
+            f"Changing position gains {words.span(max(0.0, found['worth_s']))} on"
+            f" {words.filled(found['best_single'])} all the way."
+        )
+    if found["break_even_share"] is not None:
+        cost = 100.0 * (1.0 - found["break_even_share"] / found["upper_power_share"])
+        lines.append(
+            f"All the way, {lower} is faster here than {upper} as long as it costs less than"
+            f" {words.number(cost, 1)} % of power (power_share"
+            f" {words.number(found['break_even_share'], 3)})."
+        )
+    return tuple(lines)
 
 
 def _cues(plan: Plan, units: Units) -> str:
