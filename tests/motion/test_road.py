@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
 import pytest
 
+from pacing.bike import DragArea
 from pacing.bike.resistance import road_power_w
 from pacing.motion import road_for
 
@@ -111,3 +113,26 @@ def test_each_cell_has_the_weather_of_the_hour_it_is_ridden_in(
     road = road_for(race, clock_s=3600.0 * np.array([8.0, 9.5, 11.0]))
     assert road.wind_along_m_s == pytest.approx([0.0, 2.0, 4.0])
     assert road.half_density_kg_m3[2] < road.half_density_kg_m3[1] < road.half_density_kg_m3[0]
+
+
+def test_each_cell_has_the_drag_of_the_position_it_is_ridden_in(
+    make_road: Callable[..., Any],
+) -> None:
+    low, high = DragArea((0.0, 10.0), (0.23, 0.22)), DragArea((0.0,), (0.32,))
+    wind = {"wind_along_m_s": 2.0, "wind_across_m_s": 3.0}
+    speed = np.linspace(3.0, 16.0, 40)
+    position = (np.arange(40) // 7 % 2).astype(np.intp)
+    both = replace(
+        make_road(0.02, cells=40, drag_area=low, **wind),
+        drag_areas=(low, high),
+        position=position,
+    )
+    mixed = both.resistance_n_and_slope(speed)
+    for index, area in enumerate((low, high)):
+        one = make_road(0.02, cells=40, drag_area=area, **wind).resistance_n_and_slope(speed)
+        here = position == index
+        for value, expected in zip(mixed, one, strict=True):
+            assert value[here] == pytest.approx(expected[here], rel=1e-12)
+    areas = both.drag_area_m2(speed)
+    assert np.all(areas[position == 1] == 0.32)
+    assert np.all((areas[position == 0] <= 0.23) & (areas[position == 0] >= 0.22))

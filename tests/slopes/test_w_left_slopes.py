@@ -17,7 +17,7 @@ from pacing.motion import Mode
 from pacing.motion.limits import with_braking
 from pacing.plan.marginal import reduced_slope
 from pacing.plan.problem import ride
-from pacing.plan.solve import margins_j
+from pacing.plan.solve import _Evenness, margins_j
 from pacing.rider.budget import RECOVERY_LAWS
 
 STARTS = np.array([0, 2, 22, 60, 110, 111, 170, 205, 260, 330, 360], dtype=np.intp)
@@ -152,3 +152,10 @@ def test_the_reduced_slopes_of_a_piece_add_up_to_that_of_its_power(
     together = np.add.reduceat(reduced_slope(ridden, prices), STARTS)
     expected = ridden.time_slopes - prices @ ridden.lowest_slopes.lowest
     assert together == pytest.approx(expected, rel=1e-9, abs=1e-12)
+
+
+def test_the_evenness_term_follows_every_power(problem_of: Callable[..., Any]) -> None:
+    problem = problem_of()
+    even = _Evenness(ride(problem, STARTS, POWER_W + 7.0), 0.05)
+    found = differences(problem, lambda ridden: np.array(even.seconds(ridden)))
+    assert even.slopes(ride(problem, STARTS, POWER_W)) == pytest.approx(found, rel=1e-5, abs=1e-9)
