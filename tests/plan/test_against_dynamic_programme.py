@@ -15,6 +15,8 @@ from dynamic_programme import DynamicProgramme
 from exported import Exported, read_exported
 
 import pacing
+from pacing.plan.frames import model_inputs, trace_frame
+from pacing.plan.free import ride_free
 from pacing.plan.prepare import prepare
 from pacing.plan.solve import solve
 
@@ -61,13 +63,15 @@ def _race(folder: Path) -> pacing.Race:
 
 def _ours_and_the_road(race: pacing.Race, per_piece: int) -> tuple[float, Exported]:
     """Our optimum with pieces of ``per_piece`` cells, and the road as exported."""
-    plan = pacing.plan_race(race)
-    road = read_exported(plan.trace, plan.inputs["model"])
-    problem = prepare(race).problem
+    prepared = prepare(race)
+    problem = prepared.problem
     assert problem.cells % per_piece == 0
     starts = np.arange(0, problem.cells, per_piece, dtype=np.intp)
-    found = solve(problem, starts, np.full(starts.size, 300.0))
-    return found.ride.motion.total_s, road
+    free = ride_free(problem, prepared.constant).ride
+    begin_w = np.add.reduceat(free.motion.power_w * free.motion.time_s, starts)
+    begin_w /= np.add.reduceat(free.motion.time_s, starts)
+    found = solve(problem, starts, begin_w).ride
+    return found.motion.total_s, read_exported(trace_frame(race, found), model_inputs(race, found))
 
 
 @pytest.mark.slow

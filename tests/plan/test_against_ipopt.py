@@ -46,7 +46,7 @@ def _same_at_equal_pieces(one: Made) -> None:
 
 def _free(one: Made, name: str) -> None:
     """Report the gap to power free in every cell, and hold it within reason."""
-    peer = _best(one.road, None)
+    peer = _best(one.free_road, None)
     gap = _over_pct(one.unrounded_s, peer.time_s)
     printed = _over_pct(one.plan.time_s, peer.time_s)
     constant = _over_pct(one.plan.constant["time_s"], peer.time_s)

@@ -26,8 +26,8 @@ FREE_PCT = 0.02
 
 def _free(one: Made) -> ipopt_peer.PeerSolution:
     """IPOPT's better answer of two starts."""
-    guesses = (None, 0.85 * float(np.min(one.road.critical_power_w)))
-    found = [ipopt_peer.solve(one.road, constant_w=watts) for watts in guesses]
+    guesses = (None, 0.85 * float(np.min(one.free_road.critical_power_w)))
+    found = [ipopt_peer.solve(one.free_road, constant_w=watts) for watts in guesses]
     good = [f for f in found if f.status in ("Solve_Succeeded", "Solved_To_Acceptable_Level")]
     assert good, [f.status for f in found]
     return min(good, key=lambda f: f.time_s)

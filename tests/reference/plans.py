@@ -12,14 +12,20 @@ import numpy as np
 import races
 
 import pacing
+from pacing.motion.road import road_for
 
 
 @dataclass(frozen=True)
 class Made:
-    """A plan and what the peers may know of it."""
+    """A plan and what the peers may know of it.
+
+    ``road`` is the trace's. A plan may lower the trace's limits where it freewheels into slow
+    places; ``free_road`` has the limits of the course alone, so that a peer is not held to that.
+    """
 
     plan: pacing.Plan
     road: exported.Exported
+    free_road: exported.Exported
 
     @property
     def unrounded_s(self) -> float:
@@ -45,4 +51,5 @@ def made(
     with tempfile.TemporaryDirectory() as folder:
         race = case.race(Path(folder), recorded=recorded, law=law, cues=cues)
         plan = pacing.plan_race(race)
-    return Made(plan, exported.read_exported(plan.trace, plan.inputs["model"]))
+    road = exported.read_exported(plan.trace, plan.inputs["model"])
+    return Made(plan, road, road.under(limit_m_s=road_for(race).limit_m_s))
