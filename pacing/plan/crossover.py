@@ -21,7 +21,7 @@ from pacing.units import GRAVITY_M_S2, KMH_PER_M_S
 Array = NDArray[np.float64]
 
 LOWEST_SHARE, HIGHEST_SHARE = 0.5, 1.5
-GRADIENTS_PCT = np.arange(-3.0, 12.01, 0.5)
+GRADIENTS_PCT = np.arange(-3.0, 12.01, 0.25)
 FASTEST_M_S = 40.0
 
 
@@ -136,10 +136,7 @@ def positions_report(race: Race, ridden: Ride, choice: Choice) -> dict[str, Any]
     still, effort_w = still_air(race, ridden), float(ridden.problem.critical_power_w[0])
     order = np.argsort([seat_of(race, position).area_m2 for position in positions], kind="stable")
     lowest, highest = int(order[0]), int(order[-1])
-    pairs = [
-        _pair(race, still, choice, int(a), int(b), effort_w)
-        for a, b in pairwise(order)
-    ]
+    pairs = [_pair(race, still, choice, int(a), int(b), effort_w) for a, b in pairwise(order)]
     widest = pairs[0] if len(pairs) == 1 else _pair(race, still, choice, lowest, highest, effort_w)
     asked = asked_in_pieces(ridden.problem, ridden.starts)
     worth = None

@@ -65,16 +65,14 @@ def _draw_regions(axes: Axes, lines: Any, names: tuple[str, str], unit: float) -
     gradient = np.array(lines["gradient_pct"])
     equal = unit * np.array([np.nan if v is None else v for v in lines["equal_kmh"]])
     lower, upper = (unit * np.array(lines[key]) for key in ("lower_kmh", "upper_kmh"))
-    axes.plot(gradient, lower, color=style.INK, lw=1.3)
-    axes.plot(gradient, upper, color=style.INK, lw=1.3, ls=(0, (4, 2)))
-    axes.annotate(f"{names[0]} at that effort", (gradient[1], lower[1]), xytext=(6, 4),
-                  textcoords="offset points", fontsize=8)  # fmt: skip
-    axes.annotate(f"{names[1]} (dashed)", (gradient[1], upper[1]), xytext=(-2, -6),
-                  textcoords="offset points", fontsize=8, va="top", ha="left")  # fmt: skip
+    axes.plot(gradient, lower, color=style.INK, lw=1.3, label=f"{names[0]} at that effort")
+    axes.plot(
+        gradient, upper, color=style.INK, lw=1.3, ls=(0, (4, 2)), label=f"{names[1]} at that effort"
+    )
     known = np.isfinite(equal)
     if not np.any(known):
         return
-    axes.fill_between(gradient, 0.0, np.where(known, equal, 0.0), color=style.FILL, lw=0, zorder=0)
+    axes.fill_between(gradient[known], 0.0, equal[known], color=style.FILL, lw=0, zorder=0)
     axes.text(
         11.8, 1.5, f"here {names[1]} asks for less effort", ha="right", va="bottom", fontsize=8
     )
@@ -83,28 +81,27 @@ def _draw_regions(axes: Axes, lines: Any, names: tuple[str, str], unit: float) -
 def _draw_cues(axes: Axes, plan: Plan, unit: float) -> None:
     """Each cue at its mean gradient and speed: filled in the lower position."""
     assert plan.positions is not None
-    for _, cue in plan.cues.iterrows():
-        low = cue["position"] == plan.positions["lower"]
-        axes.plot(
-            [float(np.clip(cue["gradient_pct"], -3.0, 12.0))],
-            [unit * cue["speed_kmh"]],
-            marker="o",
-            ms=5,
-            mfc=style.INK if low else style.PAPER,
-            mec=style.INK,
-            ls="none",
-            zorder=3,
-        )
-    axes.text(
-        0.99,
-        0.97,
-        "dots: the cues, hollow where not in the lower position",
-        transform=axes.transAxes,
-        ha="right",
-        va="top",
-        fontsize=8,
-        color=style.GREY,
-    )
+    lowest, last = plan.positions["lower"], plan.positions["lines"]["gradient_pct"][-1]
+    first = plan.positions["lines"]["gradient_pct"][0]
+    inside = plan.cues[plan.cues["gradient_pct"].between(first, last)]
+    low = inside["position"] == lowest
+    for shown, fill, said in (
+        (inside[low], style.INK, f"cues ridden on {_name(lowest)}"),
+        (inside[~low], style.PAPER, "cues ridden otherwise"),
+    ):
+        if len(shown):
+            axes.plot(
+                shown["gradient_pct"].to_numpy(),
+                unit * shown["speed_kmh"].to_numpy(),
+                marker="o",
+                ms=5,
+                mfc=fill,
+                mec=style.INK,
+                ls="none",
+                zorder=3,
+                label=said,
+            )
+    axes.legend(loc="upper right")
 
 
 def _name(name: str) -> str:

@@ -21,7 +21,7 @@ from pacing.plan.solve import solve
 LOW = {"name": "bars", "cda_m2": 0.235}
 HIGH = {"name": "upright", "cda_m2": 0.32, "power_share": 1.04}
 HILLS = {
-    "climbs and flats": np.repeat([0.0, 0.07, -0.03, 0.05, 0.01, 0.09, 0.0, -0.05], 60),
+    "climbs and flats": np.repeat([0.0, 0.07, -0.03, 0.05, 0.01, 0.09, 0.0, -0.05], 45),
     "near the crossover": np.repeat([0.02, 0.035, 0.045, 0.03, 0.05, 0.02], 60),
     "one long climb": np.repeat([0.0, 0.03, 0.06, 0.08, 0.05], 80),
 }
