@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
 WIDE_MM, HIGH_MM = 150.0, 105.0
 DOTS_PER_INCH = 150
+SAID_PT = 8.0
 MOST_NAME = 18
 
 
@@ -34,7 +35,8 @@ def figure(plan: Plan) -> Figure:
     picture = Figure(figsize=(style.inches(WIDE_MM), style.inches(HIGH_MM)))
     axes = picture.add_axes((0.09, 0.13, 0.88, 0.68))
     picture.text(0.09, 0.935, f"{lower} or {upper}", fontsize=style.TITLE_PT, fontweight="bold")
-    picture.text(0.09, 0.88, _said(found, upper, units), color=style.GREY)
+    said = _said(found, upper, units)
+    picture.text(0.09, 0.885, said, fontsize=SAID_PT, color=style.GREY)
     faster = plan_speed(units)
     _draw_regions(axes, found["lines"], (lower, upper), faster)
     _draw_cues(axes, plan, faster)

@@ -87,7 +87,7 @@ def test_the_adjoint_tells_what_a_short_stretch_in_another_position_costs(
     now = int(problem.sitting.asked[0])
     changes = position_changes_s(base)[1 - now]
     shares = [p.power_share for p in race.rider.positions]
-    for a, b in ((65, 100), (200, 235), (310, 350)):
+    for a, b in ((95, 130), (185, 220), (320, 355)):
         starts = np.unique([*ridden.starts, a, b])
         asked = np.where(starts == a, 1 - now, now)
         power = ridden.target_w[starts].copy()

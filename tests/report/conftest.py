@@ -42,6 +42,7 @@ class MadePlan:
     constant: dict[str, Any] | None
     cautions: tuple[str, ...]
     inputs: dict[str, Any]
+    positions: dict[str, Any] | None = None
 
     def to_json_dict(self) -> dict[str, Any]:
         """As a real plan gives itself, NaN and numpy numbers included."""

@@ -256,5 +256,6 @@ def test_every_output_of_the_interface_is_known() -> None:
         "profile.png",
         "map.png",
         "cues.gpx",
+        "positions.png",
         "report.html",
     }
