@@ -23,6 +23,8 @@ Array = NDArray[np.float64]
 
 REACH_M = 160.0
 """How far a boundary may be moved to a readable place."""
+IDLE_CUT_S = 0.03
+"""A cut that gains less is dropped before the cues are made."""
 MOST_TRIES = 8
 SHORTEST_SLACK = 1.02
 """Cues are placed a little longer than they need be: rounding changes their times."""
@@ -38,14 +40,18 @@ class Printed(NamedTuple):
 def print_cues(race: Race, solution: Solution) -> Printed:
     """Cues as printed, from the optimal pieces.
 
-    Where pieces are so long that a step of power is much of W′, some cues may be better spent
-    on changing between two steps; both ways are tried.
+    A cut that gains next to nothing is not worth a rider's eye. Where pieces are so long that a
+    step of power is much of W′, some cues may be better spent on changing between two steps;
+    both ways are tried.
     """
     step_w = race.plan.power_step_w * race.rider.power_meter_factor
+    most = race.plan.max_cues
+    several = np.unique(asked_in_pieces(solution.ride.problem, solution.ride.starts)).size > 1
+    if not several:
+        solution = merged_to(solution, most, idle_s=IDLE_CUT_S)
     ways = [_printed(race, solution, step_w)]
     long = int(np.sum(long_pieces(solution.ride, step_w=step_w)))
-    most = race.plan.max_cues - min(long, race.plan.max_cues // 2)
-    several = np.unique(asked_in_pieces(solution.ride.problem, solution.ride.starts)).size > 1
+    most -= min(long, most // 2)
     if long and solution.ride.starts.size > most and not several:
         ways.append(_printed(race, merged_to(solution, most), step_w))
     best = min(ways, key=lambda way: way.ride.motion.total_s)

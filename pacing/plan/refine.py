@@ -161,15 +161,23 @@ def _best_insert(
     )
 
 
-def merged_to(solution: Solution, most_pieces: int) -> Solution:
-    """Merge the neighbours that cost least to merge until ``most_pieces`` are left; solve again."""
+def merged_to(solution: Solution, most_pieces: int, *, idle_s: float = 0.0) -> Solution:
+    """Merge the neighbours that cost least to merge until ``most_pieces`` are left; solve again.
+
+    Below that, merging goes on while a cut gains less than ``idle_s`` seconds.
+    """
     ridden = solution.ride
     starts, power = ridden.starts, ridden.power_w
     bend = curvature(ridden)
-    while starts.size > max(1, most_pieces):
-        drop = int(np.argmin(_merge_costs(starts, power, bend))) + 1
-        starts = np.delete(starts, drop)
+    while starts.size > 1:
+        costs = _merge_costs(starts, power, bend)
+        drop = int(np.argmin(costs))
+        if starts.size <= most_pieces and costs[drop] >= idle_s:
+            break
+        starts = np.delete(starts, drop + 1)
         power = averaged(ridden.target_w, ridden.motion.time_s, starts)
+    if starts.size == ridden.starts.size:
+        return solution
     return solve(ridden.problem, starts, power, guess_m_s=ridden.motion.speed_m_s)
 
 
