@@ -19,11 +19,15 @@ from pacing.plan.position_road import asked_in_pieces
 from pacing.plan.solve import Solution, solve
 
 LEAST_GAIN_S = 2e-3
-HOPE_SHARE = 2e-4
-"""What promises to lose less than this share of the time is still tried: prices are local."""
+HOPE_SHARE, HOPE_SHARE_FEW = 2e-4, 1e-3
+"""What promises to lose less than this share of the time is still tried: prices are local.
+
+With few pieces they are long and the prices less sure, and trying costs less.
+"""
 MOST_TRIES = 8
 MOST_ROUNDS = 40
-PIECES_IN_PAIRS = 8
+MOST_RESTARTS = 3
+FEW_PIECES = 8
 ALLOWED_S = 0.5
 """Seconds outside a position's bounds that are let pass: a cell or so at a boundary."""
 
@@ -64,18 +68,19 @@ def choose_positions(
     allowed = [k for k, s in enumerate(singles) if outside_s(s.ride) <= ALLOWED_S]
     search.best = min(singles, key=lambda s: merit_s(s.ride))
     search.try_all(_greedy(search.best))
-    for _ in range(MOST_ROUNDS):
-        moves = flips(search.best)
-        if cut:
-            moves += stretches(search.best, most_pieces=most_pieces, shortest_s=shortest_s)
-            moves += slides(search.best, shortest_s=shortest_s)
-        if search.improves(moves, MOST_TRIES):
-            continue
-        small = search.best.ride.starts.size <= PIECES_IN_PAIRS
-        if not small or not search.improves(_pairs(search.best), 3 * MOST_TRIES):
+    cutting = (most_pieces, shortest_s) if cut else None
+    for _ in range(MOST_RESTARTS):
+        search.descend(cutting)
+        if not allowed:
             break
-    single = min(allowed, key=lambda k: singles[k].ride.motion.total_s, default=None)
-    return Choice(search.best, tuple(singles), single, search.solves, search.iterations)
+        # the pieces found may suit one position all the way better, too
+        single = min(allowed, key=lambda k: singles[k].ride.motion.total_s)
+        again = search.solve(_all_in(search.best, single))
+        singles[single] = min(singles[single], again, key=lambda s: s.ride.motion.total_s)
+        if not search.takes(again):
+            break
+    best = min(allowed, key=lambda k: singles[k].ride.motion.total_s, default=None)
+    return Choice(search.best, tuple(singles), best, search.solves, search.iterations)
 
 
 class _Search:
@@ -104,16 +109,35 @@ class _Search:
         for move in moves:
             self._kept(move)
 
+    def descend(self, cutting: tuple[int, float] | None) -> None:
+        """Change what pays until nothing does; pieces are cut within ``cutting`` if given."""
+        for _ in range(MOST_ROUNDS):
+            moves = flips(self.best)
+            if cutting is not None:
+                most, shortest_s = cutting
+                moves += stretches(self.best, most_pieces=most, shortest_s=shortest_s)
+                moves += slides(self.best, shortest_s=shortest_s)
+            if self.improves(moves, MOST_TRIES):
+                continue
+            few = self.best.ride.starts.size <= FEW_PIECES
+            if not few or not self.improves(_pairs(self.best), 3 * MOST_TRIES):
+                break
+
     def improves(self, moves: list[Move], most: int) -> bool:
         """Solve the most promising of the moves until one gains."""
-        hopeless = -HOPE_SHARE * self.best.ride.motion.total_s
+        ridden = self.best.ride
+        share = HOPE_SHARE_FEW if ridden.starts.size <= FEW_PIECES else HOPE_SHARE
+        hopeless = -share * ridden.motion.total_s
         hopeful = sorted(
             (m for m in moves if m.gain_s > hopeless), key=lambda m: m.gain_s, reverse=True
         )
         return any(self._kept(move) for move in hopeful[:most])
 
     def _kept(self, move: Move) -> bool:
-        found = self.solve(move)
+        return self.takes(self.solve(move))
+
+    def takes(self, found: Solution) -> bool:
+        """Make it the best if it gains."""
         if merit_s(self.best.ride) - merit_s(found.ride) <= LEAST_GAIN_S:
             return False
         self.best = found
@@ -126,8 +150,12 @@ def _uniform(solution: Solution) -> list[Move]:
     asked = asked_in_pieces(problem, starts)
     assert problem.sitting is not None
     others = [p for p in range(len(problem.sitting.positions)) if p != asked[0]]
-    pieces = tuple(range(starts.size))
-    return [flipped(solution, pieces, (p,) * starts.size) for p in others]
+    return [_all_in(solution, p) for p in others]
+
+
+def _all_in(solution: Solution, position: int) -> Move:
+    count = solution.ride.starts.size
+    return flipped(solution, tuple(range(count)), (position,) * count)
 
 
 def _greedy(solution: Solution) -> list[Move]:

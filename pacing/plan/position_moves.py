@@ -17,13 +17,14 @@ from pacing.plan.position_prices import (
 from pacing.plan.position_road import asked_in_pieces, with_pieces
 from pacing.plan.problem import Cuts, Problem, Ride, ride
 from pacing.plan.refine import averaged
-from pacing.plan.solve import Solution, margins_j
+from pacing.plan.solve import Solution, margins_j, power_bounds_w
 
 Array = NDArray[np.float64]
 
 MOST_PLACES = 60
 """Places looked at within a piece for a change of position."""
 LEAST_STRETCH_GAIN_S = 0.05
+AT_BOUND_W = 1.0
 
 
 class Move(NamedTuple):
@@ -41,18 +42,28 @@ def applied(problem: Problem, move: Move) -> Problem:
 
 
 def flipped(solution: Solution, pieces: tuple[int, ...], positions: tuple[int, ...]) -> Move:
-    """Some pieces in other positions at the same effort, judged by one ride at the old prices."""
+    """Some pieces in other positions at the same effort, judged by one ride at the old prices.
+
+    A piece at its highest power may stay there if that pays, for the bound was what held it.
+    """
     ridden = solution.ride
-    asked = asked_in_pieces(ridden.problem, ridden.starts).copy()
-    shares = _shares(ridden.problem)
-    power = ridden.power_w.copy()
-    for piece, position in zip(pieces, positions, strict=True):
-        power[piece] *= shares[position] / shares[asked[piece]]
-        asked[piece] = position
-    power = np.clip(power, ridden.problem.min_power_w, ridden.problem.max_power_w)
-    move = Move(0.0, ridden.starts, power, asked)
+    now = asked_in_pieces(ridden.problem, ridden.starts)
+    asked, shares = now.copy(), _shares(ridden.problem)
+    asked[list(pieces)] = positions
+    low, high = power_bounds_w(ridden.problem, ridden)
+    power = np.clip(ridden.power_w * shares[asked] / shares[now], low, high)
+    ways = [_judged(solution, Move(0.0, ridden.starts, power, asked))]
+    held = (ridden.power_w > high - AT_BOUND_W) & (power < high - AT_BOUND_W)
+    if np.any(held):
+        full = np.where(held, ridden.power_w, power)
+        ways.append(_judged(solution, Move(0.0, ridden.starts, full, asked)))
+    return max(ways, key=lambda move: move.gain_s)
+
+
+def _judged(solution: Solution, move: Move) -> Move:
+    ridden = solution.ride
     there = ride(
-        applied(ridden.problem, move), ridden.starts, power, guess_m_s=ridden.motion.speed_m_s
+        applied(ridden.problem, move), move.starts, move.power_w, guess_m_s=ridden.motion.speed_m_s
     )
     left = solution.multipliers_s_per_j @ (margins_j(there) - margins_j(ridden))
     return move._replace(gain_s=float(merit_s(ridden) - merit_s(there) + left))

@@ -168,3 +168,28 @@ def test_two_equal_positions_change_nothing(make_race: Callable[..., Any]) -> No
     choice = choose_positions(twin, most_pieces=6, shortest_s=30.0)
     assert choice.solution.ride.motion.total_s == pytest.approx(base.ride.motion.total_s, abs=0.02)
     assert outside_s(choice.solution.ride) == 0.0
+
+
+def test_what_changing_is_worth_is_not_won_by_cutting_alone(make_race: Callable[..., Any]) -> None:
+    """From two pieces that hide a climb: the single position is given the pieces found, too."""
+    gradient = np.repeat([0.0, 0.06, 0.0, 0.0], 160)
+    base = _solved(make_race(gradient, rider__positions=RIDERS["two"]), 2)
+    choice = choose_positions(base, most_pieces=8, shortest_s=30.0)
+    found = choice.solution.ride
+    asked = asked_in_pieces(found.problem, found.starts)
+    assert set(asked.tolist()) == {0, 1}
+    assert choice.single_s is not None
+    bars = with_pieces(found.problem, found.starts, np.zeros_like(asked))
+    alone = solve(bars, found.starts, np.clip(found.power_w, 0.0, 400.0)).ride.motion.total_s
+    assert found.motion.total_s < choice.single_s <= alone + 0.01
+
+
+def test_a_change_that_only_the_cap_would_pay_for_is_seen_through(
+    make_race: Callable[..., Any],
+) -> None:
+    """On a climb short enough for the highest power in both, the same effort misleads."""
+    gradient = np.repeat([0.0, 0.06, 0.0, 0.0], 80)
+    base = _solved(make_race(gradient, rider__positions=RIDERS["two"]), 2)
+    choice = choose_positions(base, most_pieces=8, shortest_s=30.0)
+    assert choice.single_s is not None
+    assert choice.solution.ride.motion.total_s <= choice.single_s + 1e-3
