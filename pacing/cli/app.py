@@ -12,6 +12,7 @@ from contextlib import suppress
 import typer
 
 from pacing.cli.course import course
+from pacing.cli.debrief import debrief
 from pacing.cli.everywhere import Debug, Version
 from pacing.cli.fit_drag import fit_drag
 from pacing.cli.fit_power import fit_power
@@ -31,7 +32,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
     no_args_is_help=True,
 )
-for command in (new, course, plan, fit_power, fit_drag):
+for command in (new, course, plan, fit_power, fit_drag, debrief):
     app.command(command.__name__.replace("_", "-"))(command)
 
 

@@ -135,6 +135,7 @@ def _solved(task: _Task, *, crr_sd: float | None) -> tuple[Solved, NDArray[np.bo
         session.rides,
         race,
         positions=task.names,
+        crr=rolling_crr(race),
         crr_sd=crr_sd,
         tilt=tilt_of(session.rides) if even else None,
         headed=session.headed,

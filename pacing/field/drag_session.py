@@ -23,9 +23,11 @@ class Session:
     ``dt_s``, ``way_m``, ``rise_m`` (NaN without heights), ``east_m`` and ``north_m`` moved;
     ``speed_m_s`` at mid-step and ``half_square`` the gain of v²/2 [m²/s²]; ``work_j`` at the
     wheel as the meter showed it; ``half_density_kg_m3``; ``sine`` and ``cosine`` of the heading;
-    ``ride`` index; ``group`` the index of the position ridden in, −1 where none asked for;
-    ``usable`` where all that is needed was measured. ``from_s`` and ``from_m`` are where in the
-    ride a step begins. ``rides`` and ``first`` (R,) are the rides and their first steps.
+    ``wind_share`` of the wind that reaches the rider and ``crr_factor`` of the road's surface, 1
+    where nothing is known; ``ride`` index; ``group`` the index of the position ridden in, −1
+    where none asked for; ``usable`` where all that is needed was measured. ``from_s`` and
+    ``from_m`` are where in the ride a step begins. ``rides`` and ``first`` (R,) are the rides and
+    their first steps.
     """
 
     rides: tuple[Ride, ...]
@@ -42,6 +44,8 @@ class Session:
     half_density_kg_m3: Array
     sine: Array
     cosine: Array
+    wind_share: Array
+    crr_factor: Array
     ride: Index
     group: Index
     usable: Flags
@@ -110,6 +114,8 @@ def _steps(ride: Ride, race: Race, group: Index, height: Array) -> dict[str, NDA
         "half_density_kg_m3": 0.5 * density,
         "sine": np.nan_to_num(sine / length),
         "cosine": np.nan_to_num(cosine / length),
+        "wind_share": np.ones_like(dt),
+        "crr_factor": np.ones_like(dt),
         "group": np.where(same, group[1:], -1),
         "usable": usable,
         "from_s": ride.time_s[:-1],

@@ -62,6 +62,7 @@ class System:
     bearing_n_per_m_s: float
     work_j: Array
     way_m: Array
+    rolled_m: Array
     speed_way: Array
     square: Array
     rise_m: Array
@@ -87,16 +88,16 @@ class System:
         weight = mass * GRAVITY_M_S2
         rise = self._rise(theta, slopes, weight)
         kinetic = (mass + self.rotating_kg) * scale**2 * self.square
-        rolling = weight * crr * scale * self.way_m
+        rolling = weight * crr * scale * self.rolled_m
         bearing = self.bearing_n * scale * self.way_m
         bearing = bearing + self.bearing_n_per_m_s * scale**2 * self.speed_way
         work = (1.0 + theta[u.at("meter")]) * self.work_j
         left = work - kinetic - weight * rise - rolling - bearing - density * air.force_j
 
-        slopes[:, u.at("rolling")] = -weight * scale * self.way_m
+        slopes[:, u.at("rolling")] = -weight * scale * self.rolled_m
         slopes[:, u.at("meter")] = self.work_j
         slopes[:, u.at("density")] = -air.force_j
-        by_mass = scale**2 * self.square + GRAVITY_M_S2 * (rise + crr * scale * self.way_m)
+        by_mass = scale**2 * self.square + GRAVITY_M_S2 * (rise + crr * scale * self.rolled_m)
         slopes[:, u.at("mass")] = -by_mass
         by_speed = 2.0 * kinetic + rolling + bearing
         slopes[:, u.at("speed")] = -(by_speed / scale + density * air.by_speed)
@@ -125,10 +126,10 @@ class System:
         first = u.start("wind")
         if s.headed:
             east, north = theta[first + 2 * s.ride], theta[first + 1 + 2 * s.ride]
-            along = scale * s.speed_m_s + north * s.cosine + east * s.sine
-            across = east * s.cosine - north * s.sine
+            along = scale * s.speed_m_s + s.wind_share * (north * s.cosine + east * s.sine)
+            across = s.wind_share * (east * s.cosine - north * s.sine)
         else:
-            along = scale * s.speed_m_s + theta[first + s.ride]
+            along = scale * s.speed_m_s + s.wind_share * theta[first + s.ride]
             across = np.zeros_like(along)
         flow = np.hypot(along, across) + 1e-12
         area, unit = self._areas(theta, along, across)
@@ -140,10 +141,11 @@ class System:
         columns.append(area * force + scale * by_along * s.speed_m_s)
         if s.headed:
             by_across = way * area * along * across / flow
-            columns.append(scale * (by_along * s.sine + by_across * s.cosine))
-            columns.append(scale * (by_along * s.cosine - by_across * s.sine))
+            share = scale * s.wind_share
+            columns.append(share * (by_along * s.sine + by_across * s.cosine))
+            columns.append(share * (by_along * s.cosine - by_across * s.sine))
         else:
-            columns.append(scale * by_along)
+            columns.append(scale * s.wind_share * by_along)
         air, by_area, by_square, by_speed, *by_wind = self.segments.sums(np.stack(columns))
         rows = np.arange(self.group.size)
         slopes[rows, self.group] = -density * by_area
@@ -205,6 +207,7 @@ def system_of(
         bearing_n_per_m_s=bike.bearing_n_per_m_s,
         work_j=sums(session.work_j),
         way_m=sums(session.way_m),
+        rolled_m=sums(session.crr_factor * session.way_m),
         speed_way=sums(session.speed_m_s * session.way_m),
         square=sums(session.half_square),
         rise_m=sums(np.nan_to_num(session.rise_m)),

@@ -73,6 +73,7 @@ def unknowns_for(
     race: Race,
     *,
     positions: Sequence[str],
+    crr: float,
     crr_sd: float | None,
     drag_area: tuple[float, float] = (WEAK_CDA_M2, WEAK_CDA_SD_M2),
     tilt: Tilt | None,
@@ -80,15 +81,15 @@ def unknowns_for(
 ) -> Unknowns:
     """The unknowns of these rides, with the race file's uncertainties as what is known.
 
-    ``crr_sd`` None leaves the rolling coefficient to the rides. ``drag_area`` is mean and
-    standard deviation beforehand. ``tilt`` is what is known of an even road's slope, None where
-    heights are used as recorded.
+    ``crr`` is the rolling coefficient beforehand; ``crr_sd`` None leaves it to the rides.
+    ``drag_area`` is mean and standard deviation beforehand. ``tilt`` is what is known of an even
+    road's slope, None where heights are used as recorded.
     """
     known = race.uncertainty
     found = _List([], [], [], [])
     for name in positions:
         found.add(f"drag area {name}", "drag area", *drag_area)
-    found.add("rolling", "rolling", rolling_crr(race), WEAK_CRR_SD if crr_sd is None else crr_sd)
+    found.add("rolling", "rolling", crr, WEAK_CRR_SD if crr_sd is None else crr_sd)
     blocks = []
     for number, ride in enumerate(rides):
         middle = race.plan.start_clock_s + 0.5 * float(ride.time_s[-1])

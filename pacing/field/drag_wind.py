@@ -45,6 +45,7 @@ class UnknownWind(NamedTuple):
             across = ee * cosine**2 + nn * sine**2 - 2.0 * en * sine * cosine
             # d²(flow·along) is 2 along and 1 across, where the rider outruns the wind
             here = along + 0.5 * across
+        here = here * session.wind_share**2
         return here * self.mean[session.ride], here * self.sd[session.ride]
 
 
