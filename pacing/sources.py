@@ -208,10 +208,4 @@ SOURCES: dict[str, Source] = {
         "Modeling sprint cycling using field-derived parameters and forward integration",
         "Med Sci Sports Exerc 38(3):592-597",
     ),
-    "roa-2021": Source(
-        "Roa",
-        2021,
-        "Errors of field tests of aerodynamic drag in cycling from wind and gradient",
-        "Sports Biomech",
-    ),
 }
