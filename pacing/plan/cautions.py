@@ -22,6 +22,11 @@ def plan_cautions(race: Race, ridden: Ride, constant: Ride) -> tuple[str, ...]:
     found += _fast_descents(race, ridden)
     found += _yaw_beyond_tables(race, ridden)
     found += _outside_positions(ridden)
+    if len(race.rider.positions) > 1:
+        found.append(
+            "The position of a cue is for an open road: keep the hands at the brakes wherever you "
+            "may need them."
+        )
     gain = 100.0 * (1.0 - ridden.motion.total_s / constant.motion.total_s)
     if gain > BELIEVABLE_GAIN_PCT:
         found.append(
