@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from pacing.errors import OurFaultError as OurFaultError
     from pacing.errors import PacingError as PacingError
     from pacing.errors import UnusableInputError as UnusableInputError
+    from pacing.field import debrief_ride as debrief_ride
     from pacing.field import fit_drag as fit_drag
     from pacing.field import fit_power as fit_power
     from pacing.plan import Plan as Plan
@@ -33,6 +34,7 @@ _HOMES = {
     "OurFaultError": "pacing.errors",
     "PacingError": "pacing.errors",
     "UnusableInputError": "pacing.errors",
+    "debrief_ride": "pacing.field",
     "fit_drag": "pacing.field",
     "fit_power": "pacing.field",
     "Plan": "pacing.plan",

@@ -88,7 +88,7 @@ def debrief(
 
     folder = output or race.with_name(f"{race.stem}-debrief")
     make_ready(folder, DEBRIEF_OUTPUT)
-    from pacing.field.debrief import debrief as compared
+    from pacing.field.debrief import debrief_ride
     from pacing.field.season import (
         add_to_log,
         entry_of,
@@ -101,7 +101,7 @@ def debrief(
 
     log = season or log_file(loaded)
     read_log(log)
-    found = compared(loaded, ride, columns=by_name)
+    found = debrief_ride(loaded, ride, columns=by_name)
     add_to_log(log, entry_of(found))
     record = track_record(read_log(log), rider_of(loaded))
     write_debrief(found, folder, record)

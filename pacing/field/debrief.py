@@ -69,16 +69,18 @@ class Debrief:
         return self.ridden_s - self.planned_s
 
 
-def debrief(
+def debrief_ride(
     race: Race,
     ride: str | Path | pd.DataFrame,
     *,
     columns: Mapping[str, Column] | None = None,
     plan: Plan | None = None,
+    hindsight: bool = True,
 ) -> Debrief:
     """Compare a ride, as a path or a DataFrame, with the plan for ``race``.
 
-    ``plan`` saves making it again. Raises `UnusableInputError` for a file that is no ride or does
+    ``plan`` saves making it again; ``hindsight`` False saves planning with what is known now.
+    Raises `UnusableInputError` for a file that is no ride or does
     not follow the course, and what `plan_race` raises.
     """
     recording = (
@@ -86,10 +88,12 @@ def debrief(
     )
     checked = check(recording)
     matched = match_ride(checked, race.course)
-    return _debriefed(checked, matched, plan if plan is not None else plan_race(race))
+    return _debriefed(
+        checked, matched, plan if plan is not None else plan_race(race), hindsight=hindsight
+    )
 
 
-def _debriefed(ride: Ride, matched: Matched, plan: Plan) -> Debrief:
+def _debriefed(ride: Ride, matched: Matched, plan: Plan, *, hindsight: bool) -> Debrief:
     race, trace = plan.race, plan.trace
     names = [position.name for position in race.rider.positions]
     position = np.array([names.index(name) for name in trace["position"]], dtype=np.intp)
@@ -106,7 +110,7 @@ def _debriefed(ride: Ride, matched: Matched, plan: Plan) -> Debrief:
     notes = [*ride.notes, *matched.notes]
     if learnt is None:
         notes.append("too little of the ride could be used to tell drag and wind from it")
-    best, said = _hindsight(race, learnt, power, basis)
+    best, said = _hindsight(race, learnt, power, basis) if hindsight else (None, ())
     whole = (*masked, *ridden.masked)
     return Debrief(
         plan=plan,

@@ -232,6 +232,7 @@ def _updates(debrief: Debrief) -> str:
 
 def _update(update: Update) -> str:
     digits = 5 if update.key == "bike.crr" else 4 if update.key.endswith("_m2") else 1
+    digits = 2 if update.key.endswith("_m_s") else digits
     value = words.number(update.value, digits)
     bound = f"{update.bound} " if update.bound else ""
     text = (
