@@ -1,4 +1,4 @@
-"""Constants and conversions. Everything inside is SI; conversion happens on reading and printing."""
+"""Constants and conversions: all is SI inside, and converted on reading and on printing."""
 
 from __future__ import annotations
 

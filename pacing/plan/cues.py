@@ -23,8 +23,10 @@ Array = NDArray[np.float64]
 
 REACH_M = 160.0
 """How far a boundary may be moved to a readable place."""
-IDLE_CUT_S = 0.03
-"""A cut that gains less is dropped before the cues are made."""
+IDLE_CUT_SHARE = 5e-6
+"""A cut that gains a smaller share of the time is tried without."""
+IDLE_SHARE = 5e-5
+"""Fewer cues are preferred where all in all they cost no more than this share of the time."""
 MOST_TRIES = 8
 SHORTEST_SLACK = 1.02
 """Cues are placed a little longer than they need be: rounding changes their times."""
@@ -40,22 +42,27 @@ class Printed(NamedTuple):
 def print_cues(race: Race, solution: Solution) -> Printed:
     """Cues as printed, from the optimal pieces.
 
-    A cut that gains next to nothing is not worth a rider's eye. Where pieces are so long that a
-    step of power is much of W′, some cues may be better spent on changing between two steps;
-    both ways are tried.
+    Where pieces are so long that a step of power is much of W′, some cues may be better spent
+    on changing between two steps; both ways are tried. Cuts that gain next to nothing are not
+    worth a rider's eye: fewer cues are taken where they cost less than `IDLE_SHARE`.
     """
     step_w = race.plan.power_step_w * race.rider.power_meter_factor
-    most = race.plan.max_cues
-    several = np.unique(asked_in_pieces(solution.ride.problem, solution.ride.starts)).size > 1
-    if not several:
-        solution = merged_to(solution, most, idle_s=IDLE_CUT_S)
     ways = [_printed(race, solution, step_w)]
-    long = int(np.sum(long_pieces(solution.ride, step_w=step_w)))
-    most -= min(long, most // 2)
-    if long and solution.ride.starts.size > most and not several:
-        ways.append(_printed(race, merged_to(solution, most), step_w))
-    best = min(ways, key=lambda way: way.ride.motion.total_s)
+    if np.unique(asked_in_pieces(solution.ride.problem, solution.ride.starts)).size == 1:
+        long = int(np.sum(long_pieces(solution.ride, step_w=step_w)))
+        most = race.plan.max_cues - min(long, race.plan.max_cues // 2)
+        if long and solution.ride.starts.size > most:
+            ways.append(_printed(race, merged_to(solution, most), step_w))
+        idle_s = IDLE_CUT_SHARE * solution.ride.motion.total_s
+        ways.append(_printed(race, merged_to(solution, most, idle_s=idle_s), step_w))
+    fastest = min(ways, key=_time_s)
+    enough = [way for way in ways if _time_s(way) <= (1.0 + IDLE_SHARE) * _time_s(fastest)]
+    best = min(enough, key=lambda way: (way.ride.starts.size, _time_s(way)))
     return best._replace(ride=hands_off_at_brakes(best.ride))
+
+
+def _time_s(way: Printed) -> float:
+    return way.ride.motion.total_s
 
 
 def _printed(race: Race, solution: Solution, step_w: float) -> Printed:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from pacing.plan.marginal import Marginal, curvature, marginal
 from pacing.plan.problem import Cuts, Ride
-from pacing.plan.solve import Solution, solve
+from pacing.plan.solve import Solution, power_bounds_w, solve
 
 Array = NDArray[np.float64]
 
@@ -164,17 +164,19 @@ def _best_insert(
 def merged_to(solution: Solution, most_pieces: int, *, idle_s: float = 0.0) -> Solution:
     """Merge the neighbours that cost least to merge until ``most_pieces`` are left; solve again.
 
-    Below that, merging goes on while a cut gains less than ``idle_s`` seconds.
+    Below that, merging goes on while a cut gains less than ``idle_s`` seconds. A start with a
+    cap of its own stays by itself as long as the count allows.
     """
     ridden = solution.ride
     starts, power = ridden.starts, ridden.power_w
     bend = curvature(ridden)
+    _, most_w = power_bounds_w(ridden.problem, ridden)
     while starts.size > 1:
-        costs = _merge_costs(starts, power, bend)
+        costs = _merge_costs(starts, power, bend) + 1e3 * (np.diff(most_w) != 0.0)
         drop = int(np.argmin(costs))
         if starts.size <= most_pieces and costs[drop] >= idle_s:
             break
-        starts = np.delete(starts, drop + 1)
+        starts, most_w = np.delete(starts, drop + 1), np.delete(most_w, drop + 1)
         power = averaged(ridden.target_w, ridden.motion.time_s, starts)
     if starts.size == ridden.starts.size:
         return solution
