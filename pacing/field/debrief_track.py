@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from bisect import bisect_right
 from dataclasses import dataclass
 
 import numpy as np
@@ -38,7 +39,6 @@ def follow(
     ``travelled_m`` and ``time_s`` (n,) are the ride's way and clock. NaN where the rider was
     further than ``near_m`` from the line; ends at its end or where the line was lost.
     """
-    cell = float(line.distance_m[1] - line.distance_m[0])
     last_cell = line.distance_m.size - 2
     along = np.full(travelled_m.size, np.nan)
     east, north = line.east_m.tolist(), line.north_m.tolist()
@@ -57,8 +57,8 @@ def follow(
             break
         expected = place + moved
         reach = min(REACH_M + REACH_SHARE * moved, MOST_REACH_M)
-        low = max(int((max(expected - reach, place - REACH_M)) / cell), 0)
-        high = min(int((expected + reach) / cell), last_cell)
+        low = max(bisect_right(nodes, max(expected - reach, place - REACH_M)) - 1, 0)
+        high = min(bisect_right(nodes, expected + reach) - 1, last_cell)
         best, found, off = float("inf"), place, float("inf")
         for k in range(low, high + 1):
             ax, ay = east[k], north[k]
