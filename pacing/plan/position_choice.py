@@ -18,9 +18,10 @@ from pacing.plan.position_prices import merit_s, outside_s
 from pacing.plan.position_road import asked_in_pieces
 from pacing.plan.solve import Solution, solve
 
-LEAST_GAIN_S = 2e-3
-HOPE_SHARE, HOPE_SHARE_FEW = 2e-4, 1e-3
-"""What promises to lose less than this share of the time is still tried: prices are local.
+LEAST_GAIN_SHARE = 1e-5
+"""What a change must gain, in shares of the time."""
+HOPE_SHARE, HOPE_SHARE_FEW = 1e-4, 1e-3
+"""Positions that promise to lose less than this share are still tried: prices are local.
 
 With few pieces they are long and the prices less sure, and trying costs less.
 """
@@ -67,7 +68,6 @@ def choose_positions(
     singles.sort(key=lambda s: int(asked_in_pieces(s.ride.problem, s.ride.starts)[0]))
     allowed = [k for k, s in enumerate(singles) if outside_s(s.ride) <= ALLOWED_S]
     search.best = min(singles, key=lambda s: merit_s(s.ride))
-    search.try_all(_greedy(search.best))
     cutting = (most_pieces, shortest_s) if cut else None
     for _ in range(MOST_RESTARTS):
         search.descend(cutting)
@@ -89,6 +89,7 @@ class _Search:
     def __init__(self, solution: Solution) -> None:
         self.best = solution
         self.solves = self.iterations = 0
+        self.in_vain: set[tuple[int, ...]] = set()
 
     def solve(self, move: Move) -> Solution:
         ridden = self.best.ride
@@ -105,14 +106,11 @@ class _Search:
     def solved(self, moves: Iterable[Move]) -> list[Solution]:
         return [self.solve(move) for move in moves]
 
-    def try_all(self, moves: Iterable[Move]) -> None:
-        for move in moves:
-            self._kept(move)
-
     def descend(self, cutting: tuple[int, float] | None) -> None:
         """Change what pays until nothing does; pieces are cut within ``cutting`` if given."""
         for _ in range(MOST_ROUNDS):
             moves = flips(self.best)
+            moves += _together(self.best, moves)
             if cutting is not None:
                 most, shortest_s = cutting
                 moves += stretches(self.best, most_pieces=most, shortest_s=shortest_s)
@@ -124,21 +122,27 @@ class _Search:
                 break
 
     def improves(self, moves: list[Move], most: int) -> bool:
-        """Solve the most promising of the moves until one gains."""
+        """Solve the most promising of the moves until one gains; no cut twice in vain."""
         ridden = self.best.ride
         share = HOPE_SHARE_FEW if ridden.starts.size <= FEW_PIECES else HOPE_SHARE
-        hopeless = -share * ridden.motion.total_s
-        hopeful = sorted(
-            (m for m in moves if m.gain_s > hopeless), key=lambda m: m.gain_s, reverse=True
-        )
+        hope_s, least_s = share * ridden.motion.total_s, LEAST_GAIN_SHARE * ridden.motion.total_s
+        hopeful = [
+            move
+            for move in sorted(moves, key=lambda m: m.gain_s, reverse=True)
+            if move.gain_s > (least_s if move.name else -hope_s) and move.name not in self.in_vain
+        ]
         return any(self._kept(move) for move in hopeful[:most])
 
     def _kept(self, move: Move) -> bool:
-        return self.takes(self.solve(move))
+        kept = self.takes(self.solve(move))
+        if not kept and move.name:
+            self.in_vain.add(move.name)
+        return kept
 
     def takes(self, found: Solution) -> bool:
         """Make it the best if it gains."""
-        if merit_s(self.best.ride) - merit_s(found.ride) <= LEAST_GAIN_S:
+        least_s = LEAST_GAIN_SHARE * self.best.ride.motion.total_s
+        if merit_s(self.best.ride) - merit_s(found.ride) <= least_s:
             return False
         self.best = found
         return True
@@ -158,18 +162,26 @@ def _all_in(solution: Solution, position: int) -> Move:
     return flipped(solution, tuple(range(count)), (position,) * count)
 
 
-def _greedy(solution: Solution) -> list[Move]:
-    """All flips that promise to gain by themselves, together."""
+def _together(solution: Solution, singly: list[Move]) -> list[Move]:
+    """Flips that promise to gain by themselves, all at once, and those of no two neighbours."""
     asked = asked_in_pieces(solution.ride.problem, solution.ride.starts)
-    chosen: dict[int, Move] = {}
-    for move in flips(solution):
+    chosen: dict[int, int] = {}
+    apart: dict[int, int] = {}
+    best_s = 0.0
+    for move in sorted(singly, key=lambda m: m.gain_s, reverse=True):
         piece = int(np.flatnonzero(move.asked != asked)[0])
-        if move.gain_s > max(0.0, chosen[piece].gain_s if piece in chosen else 0.0):
-            chosen[piece] = move
-    if len(chosen) < 2:
-        return []
-    pieces = tuple(chosen)
-    return [flipped(solution, pieces, tuple(int(chosen[k].asked[k]) for k in pieces))]
+        if move.gain_s <= 0.0 or piece in chosen:
+            continue
+        best_s = max(best_s, move.gain_s)
+        chosen[piece] = int(move.asked[piece])
+        if not {piece - 1, piece + 1} & apart.keys():
+            apart[piece] = chosen[piece]
+    joint = [
+        flipped(solution, tuple(some), tuple(some.values()))
+        for some in (chosen, apart)
+        if len(some) > 1
+    ]
+    return [move for move in joint if move.gain_s > best_s]
 
 
 def _pairs(solution: Solution) -> list[Move]:

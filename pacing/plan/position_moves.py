@@ -28,12 +28,16 @@ AT_BOUND_W = 1.0
 
 
 class Move(NamedTuple):
-    """Other pieces and positions (n,) to try, and the seconds they promise to gain."""
+    """Other pieces and positions (n,) to try, and the seconds they promise to gain.
+
+    ``name`` tells other cuts apart, whatever the pieces around them; empty where none is moved.
+    """
 
     gain_s: float
     starts: Cuts
     power_w: Array
     asked: NDArray[np.intp]
+    name: tuple[int, ...] = ()
 
 
 def applied(problem: Problem, move: Move) -> Problem:
@@ -104,7 +108,8 @@ def slides(solution: Solution, *, shortest_s: float) -> list[Move]:
         best = int(np.argmin(costs))
         starts = ridden.starts.copy()
         starts[k] = nodes[best]
-        found.append(Move(-costs[best], starts, ridden.power_w, asked))
+        name = (here, int(nodes[best]))
+        found.append(Move(-costs[best], starts, ridden.power_w, asked, name))
     return found
 
 
@@ -219,7 +224,7 @@ def _cut_out(
     starts = np.array(sorted(edges), dtype=np.intp)
     power = averaged(target, ridden.motion.time_s, starts)
     power = np.clip(power, problem.min_power_w, problem.max_power_w)
-    return Move(gain_s, starts, power, of_cell[starts])
+    return Move(gain_s, starts, power, of_cell[starts], (first, last, position))
 
 
 def _merge_costs(ridden: Ride, asked: NDArray[np.intp]) -> Array:
