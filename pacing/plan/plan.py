@@ -127,6 +127,7 @@ def _solver(found: Optimum, printed: Printed, seconds: float) -> dict[str, Any]:
         "kkt_residual": solution.kkt_residual,
         "free_time_s": free_s,
         "free_times_s": list(found.free_times_s),
+        "free_solved": free_s < unrounded_s,
         "unrounded_time_s": unrounded_s,
         "evenness_s": found.evenness_s,
         "gap_pct": per_cent * (printed_s - free_s),
