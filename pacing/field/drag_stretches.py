@@ -7,6 +7,7 @@ from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.ndimage import maximum_filter1d
 
 from pacing.field.drag_segments import Segments, chains, even_segments, segments_between
 from pacing.field.drag_session import Session
@@ -137,7 +138,7 @@ def _braking(session: Session, race: Race) -> Flags:
     ) ** 2 / race.mass_kg + GRAVITY_M_S2 * (0.008 + np.clip(slope, -0.3, 0.3))
     hard = -gain > np.maximum(coasting, 0.0) + BRAKING_M_S2
     hard &= session.power_w < 0.5 * race.rider.critical_power_w
-    wide = np.convolve(hard, np.ones(2 * BRAKING_REACH + 1), mode="same") > 0
+    wide = maximum_filter1d(hard, 2 * BRAKING_REACH + 1, mode="constant")
     return np.asarray(wide & session.usable)
 
 
