@@ -223,7 +223,7 @@ def test_a_file_too_large_is_refused_before_it_is_read(tmp_path, monkeypatch):
 
 def test_more_kilometres_than_a_race_has_are_refused(tmp_path):
     file = tmp_path / "course.gpx"
-    points = (f'<trkpt lat="{n / 10}" lon="7"><ele>1</ele></trkpt>' for n in range(0, 100))
+    points = (f'<trkpt lat="{n / 10}" lon="7"><ele>1</ele></trkpt>' for n in range(100))
     file.write_text(HEAD + "\n".join(points) + FOOT)
     assert _message(file) == (
         "1,095 km of road; expected a course of at most 1,000 km, all laps included. Choose a "

@@ -17,7 +17,7 @@ from races import INVENTED, RECORDED, Case
 pytest.importorskip("casadi", reason="CasADi is not installed: pip install '.[reference]'")
 import ipopt_peer
 
-pytestmark = pytest.mark.slow
+pytestmark = [pytest.mark.slow, pytest.mark.goal]
 
 UNROUNDED_PCT = {24: 0.30, 40: 0.15}
 PRINTED_PCT = {24: 0.40, 40: 0.22}
