@@ -23,6 +23,7 @@ NEAR_M = 35.0
 SAME_WAY_DEG = 70.0
 MOST_TRIED = 8
 LEAST_COVERED_M = 500.0
+FEWEST_CELLS = 5
 AT_THE_LINE_M = 5.0
 SMOOTH_SAMPLES = 21
 LENGTHS_ALIKE = 0.04
@@ -66,13 +67,20 @@ def match_ride(ride: Ride, course: Course) -> Matched:
         if found is not None and (best is None or found.better_than(best)):
             best = found
     if best is None or best.covered_m < min(LEAST_COVERED_M, 0.5 * course.length_m):
-        raise UnusableInputError(
-            "the ride does not follow the course",
-            file=ride.recording.name,
-            expected=f"a ride within {NEAR_M:.0f} m of {course.name or 'the course'}",
-            mend="check course.file, course.reverse and course.laps in the race file",
-        )
-    return _matched(ride, course, best)
+        raise _refusal(ride, course)
+    matched = _matched(ride, course, best)
+    if matched.to_node - matched.from_node < FEWEST_CELLS:
+        raise _refusal(ride, course)
+    return matched
+
+
+def _refusal(ride: Ride, course: Course) -> UnusableInputError:
+    return UnusableInputError(
+        "the ride does not follow the course",
+        file=ride.recording.name,
+        expected=f"a ride within {NEAR_M:.0f} m of {course.name or 'the course'}",
+        mend="check course.file, course.reverse and course.laps in the race file",
+    )
 
 
 class _Pass(NamedTuple):
@@ -229,5 +237,7 @@ def _by_distance(ride: Ride, course: Course) -> Matched:
     node_s = np.interp(course.distance_m, along[rising], ride.time_s[rising])
     last = int(np.searchsorted(course.distance_m, along[-1] + 1.0, side="right")) - 1
     node_s[last + 1 :] = np.nan
+    if last < FEWEST_CELLS:
+        raise _refusal(ride, course)
     notes = (f"no positions: laid along the course by distance, stretched by {ratio:.4f}",)
     return Matched(along, node_s, 0, last, 0.0, notes)
