@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from pacing.errors import UnusableInputError
+from pacing.field.drag_course import RoadKnown, roads_known
 from pacing.field.drag_fragment import drag_fragment
 from pacing.field.drag_groups import Where, groups_of
 from pacing.field.drag_misfit import misfits
@@ -98,16 +99,24 @@ def fit_rides(
     names, groups = groups_of(
         [ride.recording for ride in rides], positions or {}, race.rider.positions[0].name
     )
+    known = roads_known(rides, race)
+    rides = _with_heights(rides, known)
     session = session_of(rides, race, groups, [ride.height_m for ride in rides])
+    if known is not None:
+        session = replace(
+            session,
+            crr_factor=np.concatenate([road.crr_factor[:-1] for road in known]),
+            wind_share=np.concatenate([road.wind_share[:-1] for road in known]),
+        )
     stretches = stretches_of(session, race, method)
-    task = _Task(session, race, names, stretches)
+    task = _Task(session, race, names, stretches, on_course=known is not None)
     _refuse_too_few(task, stretches.segments)
     free, off = _solved(task, crr_sd=None)
     separable = _separable(free)
     solved = free
     if not separable:
-        known = race.uncertainty.crr_pct / 100.0
-        solved, off = _solved(task, crr_sd=max(known, LEAST_CRR_SD_SHARE) * rolling_crr(race))
+        share = max(race.uncertainty.crr_pct / 100.0, LEAST_CRR_SD_SHARE)
+        solved, off = _solved(task, crr_sd=share * task.crr)
     return _result(task, solved, off, separable=separable)
 
 
@@ -119,6 +128,25 @@ class _Task:
     race: Race
     names: tuple[str, ...]
     stretches: Stretches
+    on_course: bool = False
+
+    @property
+    def crr(self) -> float:
+        """Crr beforehand: the tyres' where the course tells its surface, else with a surface."""
+        return self.race.bike.crr if self.on_course else rolling_crr(self.race)
+
+
+def _with_heights(rides: Sequence[Ride], known: tuple[RoadKnown, ...] | None) -> list[Ride]:
+    """Rides without heights of their own get those of the course, and say so."""
+    if known is None:
+        return list(rides)
+    found = []
+    for ride, road in zip(rides, known, strict=True):
+        if not ride.has_heights and np.isfinite(road.height_m).any():
+            notes = (*ride.notes, "no heights recorded: taken from the course")
+            ride = replace(ride, has_heights=True, height_m=road.height_m, notes=notes)
+        found.append(ride)
+    return found
 
 
 def _recording(ride: object, columns: Mapping[str, Column] | None, number: int) -> Recording:
@@ -135,7 +163,7 @@ def _solved(task: _Task, *, crr_sd: float | None) -> tuple[Solved, NDArray[np.bo
         session.rides,
         race,
         positions=task.names,
-        crr=rolling_crr(race),
+        crr=task.crr,
         crr_sd=crr_sd,
         tilt=tilt_of(session.rides) if even else None,
         headed=session.headed,
@@ -248,6 +276,7 @@ def _result(task: _Task, solved: Solved, off: NDArray[np.bool_], *, separable: b
         used_s=float(system.lasting_s.sum()),
         moving_s=float(sum(ride.moving_s for ride in session.rides)),
         stretches=len(system.segments),
+        on_course=task.on_course,
         speed_range_m_s=(float(np.quantile(speeds, 0.1)), float(np.quantile(speeds, 0.9))),
     )
     fit = replace(fit, warnings=warnings_for(fit, session.rides, task.race))

@@ -23,11 +23,12 @@ def drag_fragment(fit: DragFit, race: Race) -> str:
             'cda_convention = "road"',
             "",
         ]
-    rolling = (
-        "as the road of the test rolls; divide by the factor of a rougher course.surface"
-        if fit.separable
-        else "the race file's, moved as far as the rides ask: they cannot tell it alone"
-    )
+    if fit.on_course:
+        rolling = "the tyres' own: the surface of the race file's course is taken off"
+    else:
+        rolling = "as the road of the test rolls; divide by the factor of a rougher course.surface"
+    if not fit.separable:
+        rolling = "the race file's, moved as far as the rides ask: they cannot tell it alone"
     bike = race.bike
     lines += [
         "[bike]",

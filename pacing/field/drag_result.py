@@ -93,7 +93,8 @@ class DragFit:
 
     ``cda_m2`` is of the first position. ``budget`` says which share of the variance of ``cda_m2``
     comes from which cause. ``separable`` False means Crr rests on the race file. ``used_s`` is
-    the time that was balanced, of ``moving_s``.
+    the time that was balanced, of ``moving_s``. ``on_course``
+    says that the rides followed the race file's course, whose surface then is taken off Crr.
     """
 
     cda_m2: float
@@ -117,6 +118,7 @@ class DragFit:
     moving_s: float
     stretches: int
     speed_range_m_s: tuple[float, float]
+    on_course: bool = False
     fragment: str = ""
 
     @property

@@ -110,7 +110,7 @@ def _values(fit: DragFit, race: Race) -> list[str]:
     ]
     if not USUAL_CRR[0] <= fit.crr <= USUAL_CRR[1]:
         said.append(f"A Crr of {fit.crr:.4f} is outside what tyres do on asphalt.")
-    before = rolling_crr(race)
+    before = race.bike.crr if fit.on_course else rolling_crr(race)
     if fit.separable and not fit.crr_low <= before <= fit.crr_high:
         said.append(
             f"Crr comes out at {fit.crr:.4f}, the race file has {before:.4f} on its surface: the"

@@ -9,11 +9,13 @@ from typing import Any
 import numpy as np
 import pandas as pd
 import pytest
+from ridden_plan import ridden
 from ridden_truth import Errors, Truth, coasts, loops, recorded, runs
 
 from pacing.errors import UnusableInputError
 from pacing.field.drag_fit import fit_drag, fit_rides
 from pacing.field.drag_groups import Where, positions_from
+from pacing.plan import plan_race
 from pacing.race import vary
 
 QUIET = Errors(
@@ -221,3 +223,16 @@ def test_a_ride_without_positions_still_gives_an_interval_with_the_wind_in_it(
     fit = fit_rides([blind], calm_race)
     assert fit.cda_low_m2 <= truth.cda[0] <= fit.cda_high_m2
     assert fit.wind[0].from_deg is None
+
+
+def test_a_ride_of_the_race_s_own_course_has_its_heights_and_surface(hilly_plan: Any) -> None:
+    # 1.4 on the road, no heights in the ride: both come from the course
+    race = vary(hilly_plan.race, {"course.surface": "coarse"})
+    frame = ridden(plan_race(race)).drop(columns="elevation_m")
+    fit = fit_drag(frame, race=race)
+    assert fit.on_course
+    assert fit.method == "energy balance"
+    assert any("taken from the course" in note for note in fit.notes)
+    assert fit.cda_m2 == pytest.approx(0.30, abs=0.03)
+    assert fit.crr_low <= 0.005 <= fit.crr_high
+    assert race.course.crr_factor[0] != 1.0
