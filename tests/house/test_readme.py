@@ -7,6 +7,7 @@ import re
 import subprocess
 import sys
 from pathlib import Path
+from types import ModuleType
 
 import pytest
 
@@ -55,9 +56,14 @@ def test_every_command_has_its_line_and_every_line_its_command(readme: str) -> N
 
 
 @pytest.mark.skipif(os.name != "posix", reason="the README's lines are for a POSIX shell")
-def test_every_command_of_the_readme_works_as_it_stands(readme: str, newcomer: Path) -> None:
+def test_every_command_of_the_readme_works_as_it_stands(
+    readme: str, newcomer: Path, demo_printed: str, make_shown: ModuleType
+) -> None:
+    first, *others = commands(readme)
+    assert first.split() == ["pacing", *make_shown.COMMAND]
+    assert demo_printed
     path = f"{Path(sys.executable).parent}{os.pathsep}{os.environ['PATH']}"
-    for line in commands(readme):
+    for line in others:
         done = subprocess.run(
             line,
             shell=True,
