@@ -14,11 +14,11 @@ from dataclasses import dataclass
 
 import casadi as ca
 import numpy as np
+from casadi_program import Program
 from exported import SLOWEST_M_S, Exported
 from march import follow_pools, pools_of
 
 WATTS, JOULES = 100.0, 5000.0  # units of the unknowns
-SECONDS = 100.0  # unit of the objective
 HELD_PRICE = 1.0  # s on (target − power)/WATTS · (limit − speed): nil where a limit really holds
 WASTE_PRICE = 0.1  # s per s on u·q: spending and recovering in one cell at once
 NEAR_CP_W = 2.0  # a slow pool's rate D^a/scale is rounded off below about this
@@ -134,7 +134,7 @@ def solve(
     slow_start[:3] = road.start_speed_m_s < 3.0
     groups = _groups(road, starts, could_hold | slow_start)
     g, first = groups.of_cell, groups.first
-    program = _Program()
+    program = Program()
 
     low = np.full(cells + 1, SLOWEST_M_S)
     low[0] = min(road.start_speed_m_s, road.limit_m_s[0])
@@ -190,7 +190,7 @@ def _targets(groups: _Groups, power_w: np.ndarray) -> np.ndarray:
 
 
 def _hold_motion(
-    program: _Program, road: Exported, v0: ca.SX, v1: ca.SX, power: ca.SX, slow: np.ndarray
+    program: Program, road: Exported, v0: ca.SX, v1: ca.SX, power: ca.SX, slow: np.ndarray
 ) -> None:
     """m (v₁² − v₀²)/2h <= ηP · 2/(v₀ + v₁) − mean resistance: what is missing is braking."""
 
@@ -211,7 +211,7 @@ def _hold_motion(
 
 
 def _hold_pieces(
-    program: _Program, road: Exported, groups: _Groups, power_g: ca.SX, v1: ca.SX
+    program: Program, road: Exported, groups: _Groups, power_g: ca.SX, v1: ca.SX
 ) -> None:
     """One target a piece; less than it only where a limit holds the speed."""
     for piece in np.unique(groups.piece):
@@ -250,7 +250,7 @@ def _owed_j(road: Exported, power_w: np.ndarray, speed_m_s: np.ndarray) -> np.nd
 
 
 def _hold_budget(
-    program: _Program,
+    program: Program,
     road: Exported,
     u: ca.SX,
     q: ca.SX,
@@ -278,7 +278,7 @@ def _hold_budget(
 
 
 def _hold_two_pools(
-    program: _Program,
+    program: Program,
     road: Exported,
     u: ca.SX,
     q: ca.SX,
@@ -319,66 +319,3 @@ def _hold_two_pools(
     program.hold(debt[1:], np.zeros(cells), np.full(cells, room / JOULES))
     waste = ca.sum1(ca.fmin(u, won[0] + won[1]) / pace) * WATTS
     return debt * JOULES, waste
-
-
-@dataclass(frozen=True)
-class _Found:
-    x: ca.DM
-    iterations: int
-    seconds: float
-    cpu_s: float
-    status: str
-
-
-class _Program:
-    """Unknowns with bounds and start, constraints with bounds: gathered, then handed over."""
-
-    def __init__(self) -> None:
-        self.prices: list[ca.SX] = []
-        self.x: list[ca.SX] = []
-        self.bounds: list[tuple[np.ndarray, np.ndarray, np.ndarray]] = []
-        self.g: list[ca.SX] = []
-        self.g_bounds: list[tuple[np.ndarray, np.ndarray]] = []
-
-    def unknown(self, low: np.ndarray, high: np.ndarray, start: np.ndarray) -> ca.SX:
-        symbol = ca.SX.sym(f"x{len(self.x)}", low.size)
-        self.x.append(symbol)
-        self.bounds.append((low, high, start))
-        return symbol
-
-    def hold(self, expression: ca.SX, low: np.ndarray, high: np.ndarray) -> None:
-        self.g.append(expression)
-        self.g_bounds.append((low, high))
-
-    def evaluator(self, wanted: list[ca.SX]) -> ca.Function:
-        return ca.Function("pick", [ca.vertcat(*self.x)], wanted)
-
-    def solve(self, objective: ca.SX, *, tolerance: float, verbose: bool) -> _Found:
-        options = {
-            "print_time": False,
-            "ipopt": {
-                "print_level": 5 if verbose else 0,
-                "sb": "yes",
-                "linear_solver": "mumps",
-                "tol": tolerance,
-                "max_iter": 1000,
-                # the two-pool law has a long flat tail: stop when nothing moves any more
-                "acceptable_tol": 1e-4,
-                "acceptable_constr_viol_tol": 1e-4,
-                "acceptable_obj_change_tol": 2e-7,
-                "acceptable_iter": 6,
-                "nlp_scaling_method": "none",
-                "mu_strategy": "adaptive",
-            },
-        }
-        cost = (objective + sum(self.prices)) / SECONDS
-        problem = {"x": ca.vertcat(*self.x), "f": cost, "g": ca.vertcat(*self.g)}
-        solver = ca.nlpsol("peer", "ipopt", problem, options)
-        low, high, start = (np.concatenate(side) for side in zip(*self.bounds, strict=True))
-        g_low, g_high = (np.concatenate(side) for side in zip(*self.g_bounds, strict=True))
-        began, cpu_began = time.perf_counter(), time.process_time()
-        found = solver(x0=start, lbx=low, ubx=high, lbg=g_low, ubg=g_high)
-        seconds, cpu_s = time.perf_counter() - began, time.process_time() - cpu_began
-        stats = solver.stats()
-        status, iterations = str(stats["return_status"]), int(stats["iter_count"])
-        return _Found(found["x"], iterations, seconds, cpu_s, status)
