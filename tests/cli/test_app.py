@@ -187,7 +187,9 @@ def test_an_interrupt_is_quiet_and_leaves_nothing(
 @pytest.mark.skipif(os.name != "posix", reason="signals")
 def test_a_real_interrupt_ends_with_130(write_race: Callable[..., Path]) -> None:
     code = (
-        "import sys, time\nimport pacing.plan\nfrom pacing.cli.app import main\n"
+        "import signal, sys, time\nimport pacing.plan\nfrom pacing.cli.app import main\n"
+        # a background shell hands its children a SIGINT that is ignored
+        "signal.signal(signal.SIGINT, signal.default_int_handler)\n"
         "def wait(_):\n    print('ready', flush=True)\n    time.sleep(30)\n"
         "pacing.plan.plan_race = wait\n"
         f"sys.exit(main(['plan', {str(write_race())!r}]))"
