@@ -125,7 +125,7 @@ def _debriefed(ride: Ride, matched: Matched, plan: Plan, *, hindsight: bool) -> 
         splits=split_table(plan, basis, ridden, parts),
         best_with_hindsight_s=best,
         updates=updates_from(race, learnt, power),
-        prediction=predicted(ride, matched, ridden, race),
+        prediction=predicted(ride, matched, ridden, race, position=position),
         masked=tuple(sorted(whole, key=lambda mask: (mask.from_s, mask.to_s))),
         notes=(*notes, *said),
         basis=basis,

@@ -89,7 +89,8 @@ def learn(
     stretches = stretches_of(session, race, BALANCE)
     if len(stretches.segments) < FEWEST_STRETCHES:
         return None
-    unknowns = _unknowns(ride, race, len(race.rider.positions))
+    begins = float(matched.node_s[matched.from_node])
+    unknowns = _unknowns(ride, race, len(race.rider.positions), begins)
     shapes = tuple(Shape(curve=race.drag_area(p)) for p in race.rider.positions)
     solved, kept = _solve(session, stretches.segments, race, unknowns, shapes)
     unknowns = solved.system.unknowns
@@ -120,7 +121,8 @@ def _session(
     inside &= np.nan_to_num(ride.speed_m_s) < AT_LIMIT * limit
     group = np.where(inside, position[cell], -1).astype(np.intp)
     shown = replace(ride, has_heights=True, height_m=height)
-    session = session_of([shown], race, [group], [height])
+    begins = float(matched.node_s[matched.from_node])
+    session = session_of([shown], race, [group], [height], begins_s=begins)
     return replace(
         session,
         wind_share=course.wind_share[cell[:-1]],
@@ -128,7 +130,7 @@ def _session(
     )
 
 
-def _unknowns(ride: Ride, race: Race, positions: int) -> Unknowns:
+def _unknowns(ride: Ride, race: Race, positions: int, begins_s: float) -> Unknowns:
     """A factor for each position; tyres and wind as far as the race file knows them."""
     shown = replace(ride, drift=None)
     crr_sd = max(race.uncertainty.crr_pct / 100.0, 1e-3) * race.bike.crr
@@ -141,6 +143,7 @@ def _unknowns(ride: Ride, race: Race, positions: int) -> Unknowns:
         drag_area=(1.0, WEAK_FACTOR_SD),
         tilt=None,
         headed=ride.placed,
+        begins_s=begins_s,
     )
     return _exact(found, ("drift",))
 
@@ -187,8 +190,8 @@ def _learnt(solved: Solved, explained: Solved, race: Race, masked: tuple[Masked,
     before, _ = wind_beforehand(race, race.plan.start_clock_s)
 
     def drag(theta: Array) -> Drag:
-        # A head wind alone cannot be laid on the compass.
-        wind = theta[here] if headed else before
+        # What the forecast was off by; a head wind alone cannot be laid on the compass.
+        wind = before + (theta[here] - u.mean[here]) if headed else before
         return Drag(theta[:positions], float(theta[crr] / u.mean[crr]), wind)
 
     return Learnt(

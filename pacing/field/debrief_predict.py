@@ -66,14 +66,27 @@ def predict(ride: Ride, race: Race) -> Prediction:
     return predicted(ride, matched, ridden, race)
 
 
-def predicted(ride: Ride, matched: Matched, ridden: Ridden, race: Race) -> Prediction:
-    """`predict` for a ride already brought to the course."""
+def predicted(
+    ride: Ride,
+    matched: Matched,
+    ridden: Ridden,
+    race: Race,
+    *,
+    position: NDArray[np.intp] | None = None,
+) -> Prediction:
+    """`predict` for a ride already brought to the course.
+
+    ``position`` (N,) is the index of the position in each cell of the course, by default the
+    first everywhere.
+    """
     if ridden.moving_s <= 0.0:
         raise UnusableInputError("no riding on the course", file=ride.recording.name)
     clock = race.plan.start_clock_s + np.zeros(race.course.gradient.size)
     middle = 0.5 * (ridden.clock_s[1:] + ridden.clock_s[:-1]) - ridden.clock_s[0]
     clock[ridden.cells] += middle
-    road = _stopping(part_of_road(road_for(race, clock_s=clock), ridden.cells), ridden, race)
+    road = _stopping(
+        part_of_road(road_for(race, clock_s=clock, position=position), ridden.cells), ridden, race
+    )
     start = float(ridden.speed_m_s[0])
     motion = ride_road(road, ridden.power_w, start, ridden.speed_m_s)
     off = motion.speed_m_s - ridden.speed_m_s

@@ -23,11 +23,12 @@ class Session:
     ``dt_s``, ``way_m``, ``rise_m`` (NaN without heights), ``east_m`` and ``north_m`` moved;
     ``speed_m_s`` at mid-step and ``half_square`` the gain of v²/2 [m²/s²]; ``work_j`` at the
     wheel as the meter showed it; ``half_density_kg_m3``; ``sine`` and ``cosine`` of the heading;
-    ``wind_share`` of the wind that reaches the rider and ``crr_factor`` of the road's surface, 1
-    where nothing is known; ``ride`` index; ``group`` the index of the position ridden in, −1
-    where none asked for; ``usable`` where all that is needed was measured. ``from_s`` and
-    ``from_m`` are where in the ride a step begins. ``rides`` and ``first`` (R,) are the rides and
-    their first steps.
+    ``wind_turn_m_s`` (2, S) by how much the forecast wind at the rider, from east and north, is
+    other than in the middle of the ride; ``wind_share`` of the wind that reaches the rider and
+    ``crr_factor`` of the road's surface, 1 where nothing is known; ``ride`` index; ``group`` the
+    index of the position ridden in, −1 where none asked for; ``usable`` where all that is needed
+    was measured. ``from_s`` and ``from_m`` are where in the ride a step begins. ``rides`` and
+    ``first`` (R,) are the rides and their first steps.
     """
 
     rides: tuple[Ride, ...]
@@ -44,6 +45,7 @@ class Session:
     half_density_kg_m3: Array
     sine: Array
     cosine: Array
+    wind_turn_m_s: Array
     wind_share: Array
     crr_factor: Array
     ride: Index
@@ -64,18 +66,24 @@ class Session:
 
 
 def session_of(
-    rides: Sequence[Ride], race: Race, groups: Sequence[Index], heights: Sequence[Array]
+    rides: Sequence[Ride],
+    race: Race,
+    groups: Sequence[Index],
+    heights: Sequence[Array],
+    *,
+    begins_s: float = 0.0,
 ) -> Session:
     """Join rides; ``groups`` and ``heights`` hold for each ride one value a sample (n,).
 
     ``heights`` [m] may be the recorded ones or others for the same places, NaN where unknown.
+    ``begins_s`` is the time of the recordings at which the race file's start was.
     """
     parts = [
-        _steps(ride, race, group, height)
+        _steps(ride, race, group, height, begins_s)
         for ride, group, height in zip(rides, groups, heights, strict=True)
     ]
     counts = [part["dt_s"].size for part in parts]
-    joined = {name: np.concatenate([part[name] for part in parts]) for name in parts[0]}
+    joined = {name: np.concatenate([part[name] for part in parts], axis=-1) for name in parts[0]}
     return Session(
         rides=tuple(rides),
         first=np.concatenate([[0], np.cumsum(counts)[:-1]]).astype(np.intp),
@@ -84,7 +92,9 @@ def session_of(
     )
 
 
-def _steps(ride: Ride, race: Race, group: Index, height: Array) -> dict[str, NDArray[np.generic]]:
+def _steps(
+    ride: Ride, race: Race, group: Index, height: Array, begins_s: float
+) -> dict[str, NDArray[np.generic]]:
     dt = np.diff(ride.time_s)
     speed = ride.speed_m_s
     middle = 0.5 * (speed[1:] + speed[:-1])
@@ -95,7 +105,7 @@ def _steps(ride: Ride, race: Race, group: Index, height: Array) -> dict[str, NDA
     length = np.maximum(np.hypot(sine, cosine), 1e-9)
     level = float(np.nanmean(height)) if np.isfinite(height).any() else _race_height_m(race)
     at_height = np.nan_to_num(0.5 * (height[1:] + height[:-1]), nan=level)
-    clock = race.plan.start_clock_s + ride.time_s[:-1]
+    clock = race.plan.start_clock_s + ride.time_s[:-1] - begins_s
     density = np.broadcast_to(race.day.density_kg_m3(at_height, clock), dt.shape)
     same = group[1:] == group[:-1]
     usable = ride.whole & same & (group[1:] >= 0)
@@ -114,6 +124,7 @@ def _steps(ride: Ride, race: Race, group: Index, height: Array) -> dict[str, NDA
         "half_density_kg_m3": 0.5 * density,
         "sine": np.nan_to_num(sine / length),
         "cosine": np.nan_to_num(cosine / length),
+        "wind_turn_m_s": _turning_wind(race, clock, middle_clock_s(ride, race, begins_s)),
         "wind_share": np.ones_like(dt),
         "crr_factor": np.ones_like(dt),
         "group": np.where(same, group[1:], -1),
@@ -125,3 +136,17 @@ def _steps(ride: Ride, race: Race, group: Index, height: Array) -> dict[str, NDA
 
 def _race_height_m(race: Race) -> float:
     return float(np.mean(race.course.elevation_m))
+
+
+def middle_clock_s(ride: Ride, race: Race, begins_s: float = 0.0) -> float:
+    """Clock of the day in the middle of a ride, the race file's start being at ``begins_s`` [s]."""
+    return race.plan.start_clock_s - begins_s + 0.5 * float(ride.time_s[-1])
+
+
+def _turning_wind(race: Race, clock: Array, middle_s: float) -> Array:
+    """How the forecast changes over the ride, where the race file gives it by the hour."""
+    if len(race.day.weathers) == 1:
+        return np.zeros((2, clock.size))
+    sides = [race.day.wind_at_rider(way, 1.0, clock).along_m_s for way in (90.0, 0.0)]
+    middle = [float(race.day.wind_at_rider(way, 1.0, middle_s).along_m_s) for way in (90.0, 0.0)]
+    return np.asarray(np.stack(sides) - np.array(middle)[:, None])

@@ -125,7 +125,8 @@ class System:
         scale, density = theta[u.at("speed")], 1.0 + theta[u.at("density")]
         first = u.start("wind")
         if s.headed:
-            east, north = theta[first + 2 * s.ride], theta[first + 1 + 2 * s.ride]
+            east = theta[first + 2 * s.ride] + s.wind_turn_m_s[0]
+            north = theta[first + 1 + 2 * s.ride] + s.wind_turn_m_s[1]
             along = scale * s.speed_m_s + s.wind_share * (north * s.cosine + east * s.sine)
             across = s.wind_share * (east * s.cosine - north * s.sine)
         else:

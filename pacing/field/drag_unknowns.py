@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from pacing.air import Day
 from pacing.air.wind import rider_height_factor
+from pacing.field.drag_session import middle_clock_s
 from pacing.field.drag_tilt import Tilt
 from pacing.field.recording_check import Ride
 from pacing.field.recording_drift import RATE_SD_M_PER_S
@@ -78,12 +79,13 @@ def unknowns_for(
     drag_area: tuple[float, float] = (WEAK_CDA_M2, WEAK_CDA_SD_M2),
     tilt: Tilt | None,
     headed: bool,
+    begins_s: float = 0.0,
 ) -> Unknowns:
     """The unknowns of these rides, with the race file's uncertainties as what is known.
 
     ``crr`` is the rolling coefficient beforehand; ``crr_sd`` None leaves it to the rides.
     ``drag_area`` is mean and standard deviation beforehand. ``tilt`` is what is known of an even
-    road's slope, None where heights are used as recorded.
+    road's slope, None where heights are used as recorded. ``begins_s`` as in `session_of`.
     """
     known = race.uncertainty
     found = _List([], [], [], [])
@@ -92,8 +94,7 @@ def unknowns_for(
     found.add("rolling", "rolling", crr, WEAK_CRR_SD if crr_sd is None else crr_sd)
     blocks = []
     for number, ride in enumerate(rides):
-        middle = race.plan.start_clock_s + 0.5 * float(ride.time_s[-1])
-        mean, covariance = wind_beforehand(race, middle)
+        mean, covariance = wind_beforehand(race, middle_clock_s(ride, race, begins_s))
         if not headed:
             mean, covariance = np.zeros(1), np.array([[np.trace(covariance) / 2.0]])
         blocks.append((len(found.names), covariance))

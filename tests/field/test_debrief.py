@@ -163,3 +163,19 @@ def test_frames_and_files_are_the_same(hilly_plan: Any, tmp_path: Any) -> None:
     by_frame = compared(hilly_plan, ride)
     assert by_file.ridden_s == pytest.approx(by_frame.ridden_s, abs=1e-3)
     assert by_file.name == "ride"
+
+
+def test_wind_that_changes_with_the_hours_is_no_mistake_of_the_rider(hilly_plan: Any) -> None:
+    from pacing.race import vary
+
+    hours = [
+        {
+            "at": at, "temperature_c": 18.0, "pressure_hpa": 1016.0, "wind_height_m": 1.5,
+            "wind_speed_m_s": speed, "wind_from_deg": way,
+        }
+        for at, speed, way in (("10:00", 0.5, 200.0), ("10:15", 3.0, 280.0))
+    ]  # fmt: skip
+    race = vary(hilly_plan.race, {"air.hours": hours, "plan.start": "10:00"})
+    plan = plan_race(race)
+    found = compared(plan, ridden(plan))
+    assert found.parts_s == pytest.approx(dict.fromkeys(found.parts_s, 0.0), abs=0.6)
