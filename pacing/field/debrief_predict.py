@@ -21,7 +21,6 @@ from pacing.race import Race
 Array = NDArray[np.float64]
 
 LOWEST_FACTOR, HIGHEST_FACTOR = 0.3, 3.0
-NEAR_STOP_M = 15.0
 
 
 @dataclass(frozen=True)
