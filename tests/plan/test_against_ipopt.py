@@ -1,6 +1,6 @@
 """The optimum against the same problem in CasADi, solved by IPOPT (tests/reference).
 
-Source: an independent transcription; the physics is Martin et al. 1998 in distance, W′ by
+Source: an independent formulation; the physics is Martin et al. 1998 in distance, W′ by
 Skiba et al. 2015 (and by the default law), from the numbers that a plan exports.
 """
 

@@ -1,6 +1,6 @@
 """How much time the cues cost over power free in every cell, course by course.
 
-Source: IPOPT on an independent transcription (tests/reference) of the numbers the plan exports.
+Source: IPOPT on an independent formulation (tests/reference) of the numbers the plan exports.
 Limits in percent of time: plan before rounding and placing within 0.30 with 24 cues and 0.15 with
 40, as printed within 0.40 and 0.22; our own free optimum within 0.02.
 """

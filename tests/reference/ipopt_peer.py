@@ -274,7 +274,7 @@ def _hold_budget(
         return debt * JOULES, ca.sum1(ca.fmin(u, won) / pace) * WATTS
     if name == "two-phase":
         return _hold_two_pools(program, road, u, q, pace, owed_j)
-    raise ValueError(f"no transcription of {name}")
+    raise ValueError(f"no formulation of {name}")
 
 
 def _hold_two_pools(
