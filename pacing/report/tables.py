@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
+from pacing.field.season import checked_so_far
 from pacing.report import words
 from pacing.report.words import Units
 
@@ -27,7 +28,9 @@ def plan_text(plan: Plan) -> str:
     units = words.units_named(plan.race.plan.units)
     blocks = [
         _wrapped(title(plan, units)),
-        "\n".join(_wrapped(sentence) for sentence in summary(plan, units)),
+        "\n".join(
+            _wrapped(sentence) for sentence in (*summary(plan, units), checked_so_far(plan.race))
+        ),
         _cues(plan, units),
         "\n".join(_wrapped(sentence) for sentence in positions(plan, units)),
         _splits(plan, units),
