@@ -46,8 +46,9 @@ def course(
     from pacing.course import CourseSpec
     from pacing.course.extent import NoCourseError
     from pacing.course.load import survey_course
-    from pacing.report.course_picture import check_picture_name, save_picture
+    from pacing.report.course_picture import save_picture
     from pacing.report.course_report import course_document, course_text, no_course_document
+    from pacing.report.picture_file import check_picture_name
 
     if picture is not None:
         check_picture_name(picture)

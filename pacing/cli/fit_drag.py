@@ -76,7 +76,7 @@ def fit_drag(
     from pacing.errors import UnusableInputError
     from pacing.field.drag_groups import positions_from
     from pacing.field.recording_columns import columns_from
-    from pacing.report.course_picture import check_picture_name
+    from pacing.report.picture_file import check_picture_name
 
     if race is None:
         raise UnusableInputError(

@@ -50,7 +50,7 @@ def fit_power(
     """
     from pacing.errors import UnusableInputError
     from pacing.field.power_test import evaluate
-    from pacing.report.course_picture import check_picture_name
+    from pacing.report.picture_file import check_picture_name
     from pacing.report.power_report import power_document, power_text
 
     if picture is not None:

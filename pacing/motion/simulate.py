@@ -11,7 +11,7 @@ asked for, no power above spin-out, exactly the spin-out speed, or exactly the s
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from enum import IntEnum
 
 import numpy as np
@@ -273,8 +273,3 @@ def _needed_work_j(road: Road, energy: Array, speed: Array) -> Array:
     r1, _ = road.resistance_n_and_slope(speed[1:])
     gain = road.effective_mass_kg * (energy[1:] - energy[:-1])
     return gain + 0.5 * road.cell_m * (r0 + r1)
-
-
-def with_limit(road: Road, limit_m_s: Array) -> Road:
-    """The same road under other speed limits (N+1,)."""
-    return replace(road, limit_m_s=limit_m_s)

@@ -13,6 +13,7 @@ from pacing.plan.problem import Problem, Ride
 from pacing.plan.solve import best_constant
 from pacing.race import Race
 from pacing.rider.budget import recovery_law
+from pacing.rider.power_time import declined_critical_power_w
 
 Array = NDArray[np.float64]
 
@@ -73,8 +74,13 @@ def settled(prepared: Prepared, ridden: Ride) -> Prepared:
 def planned_critical_power_w(race: Race, time_s: float) -> float:
     """Critical power the plan counts on for a race of ``time_s``."""
     rider = race.rider
-    beyond = max(time_s / 1800.0, 1.0)
-    return rider.critical_power_w - rider.long_decline_w * float(np.log(beyond))
+    return float(
+        declined_critical_power_w(
+            time_s,
+            critical_power_w=rider.critical_power_w,
+            long_decline_w=rider.long_decline_w,
+        )
+    )
 
 
 def _prepared(race: Race, clock_s: Array, critical_power_w: float) -> Prepared:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -65,10 +65,6 @@ class Problem:
     def cells(self) -> int:
         """Number of grid cells."""
         return self.road.cell_m.size
-
-    def with_critical_power(self, critical_power_w: Array) -> Problem:
-        """The same problem under another planned critical power per cell (N,)."""
-        return replace(self, critical_power_w=critical_power_w)
 
 
 @dataclass(frozen=True)

@@ -6,7 +6,7 @@ import numpy as np
 
 from pacing.errors import CannotBeRiddenError, OurFaultError
 from pacing.motion.simulate import Mode
-from pacing.plan.problem import Problem, Ride, ride
+from pacing.plan.problem import Ride, ride
 from pacing.units import KMH_PER_M_S
 
 BALANCE_TOLERANCE_J = 1.0
@@ -80,8 +80,3 @@ def _energy_left_over_j(ridden: Ride) -> float:
     gained = 0.5 * road.effective_mass_kg * (v1**2 - v0**2)
     left = work - gained - road.cell_m * (0.5 * (r0 + r1) + motion.braking_n)
     return float(left[motion.mode != Mode.FLOOR].sum())
-
-
-def lowest_margin_j(problem: Problem, ridden: Ride) -> float:
-    """W′ above the reserve at its lowest, from the balance in every cell."""
-    return float(np.min(ridden.balance_j) - problem.reserve_j)

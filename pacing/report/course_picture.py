@@ -12,45 +12,19 @@ from matplotlib.ticker import MaxNLocator
 from pacing.course.course import Course, Repair
 from pacing.course.gaps import SEGMENTS
 from pacing.course.repair import MERGED
-from pacing.errors import UnusableInputError
 from pacing.report import style, words
+from pacing.report.picture_file import save_figure
 
 WIDE_IN, STRIPS_IN, LINE_IN = 12.0, 5.6, 0.19
 LEFT_IN, RIGHT_IN, TOP_IN, FOOT_IN = 0.75, 0.2, 0.75, 0.5
 MOST_LISTED = 12
 STREWN = (MERGED, SEGMENTS, "start and finish brought to one height")
-SUFFIXES = {".png": style.PNG_METADATA, ".pdf": style.PDF_METADATA, ".svg": {"Date": None}}
-
-
-def check_picture_name(file: Path) -> None:
-    """Refuse, before any work, a picture that cannot be written under that name."""
-    if file.suffix.lower() not in SUFFIXES:
-        raise UnusableInputError(
-            f"a picture called '{file.name}'",
-            key="--output",
-            expected="a name that ends in " + ", ".join(SUFFIXES),
-        )
-    if not file.absolute().parent.is_dir():
-        raise UnusableInputError(
-            "no such folder", file=file.parent, key="--output", mend="make the folder first"
-        )
 
 
 def save_picture(course: Course, file: Path) -> None:
     """Draw the course into a file; complete or not at all."""
     with style.applied():
-        picture = figure(course)
-        beside = file.with_name(f".{file.name}.part")
-        suffix = file.suffix.lower()
-        try:
-            picture.savefig(beside, format=suffix[1:], dpi=110, metadata=SUFFIXES[suffix])
-            beside.replace(file)
-        except OSError as problem:
-            raise UnusableInputError(
-                f"cannot be written ({problem.strerror})", file=file, key="--output"
-            ) from None
-        finally:
-            beside.unlink(missing_ok=True)
+        save_figure(figure(course), file)
 
 
 def figure(course: Course) -> Figure:

@@ -8,10 +8,9 @@ import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
-from pacing.errors import UnusableInputError
 from pacing.field.drag_result import DragFit, Misfit
 from pacing.report import style
-from pacing.report.course_picture import SUFFIXES
+from pacing.report.picture_file import save_figure
 
 WIDE_IN, ROW_IN, HEAD_IN, FOOT_IN = 10.0, 2.6, 0.95, 0.6
 MOST_RIDES = 8
@@ -20,18 +19,7 @@ MOST_RIDES = 8
 def save_drag_picture(fit: DragFit, file: Path) -> None:
     """Draw the misfit into a file (.png, .pdf or .svg); complete or not at all."""
     with style.applied():
-        picture = figure(fit)
-        beside = file.with_name(f".{file.name}.part")
-        suffix = file.suffix.lower()
-        try:
-            picture.savefig(beside, format=suffix[1:], dpi=110, metadata=SUFFIXES[suffix])
-            beside.replace(file)
-        except OSError as problem:
-            raise UnusableInputError(
-                f"cannot be written ({problem.strerror})", file=file, key="--output"
-            ) from None
-        finally:
-            beside.unlink(missing_ok=True)
+        save_figure(figure(fit), file)
 
 
 def figure(fit: DragFit) -> Figure:

@@ -9,10 +9,9 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from pacing.errors import UnusableInputError
 from pacing.field.power_result import Effort, PowerFit
 from pacing.report import style, words
-from pacing.report.course_picture import SUFFIXES
+from pacing.report.picture_file import save_figure
 
 Array = NDArray[np.float64]
 
@@ -22,18 +21,7 @@ WIDE_IN, HIGH_IN = 10.0, 6.0
 def save_power_picture(fit: PowerFit, file: Path) -> None:
     """Draw the fit into a file (.png, .pdf or .svg); complete or not at all."""
     with style.applied():
-        picture = figure(fit)
-        beside = file.with_name(f".{file.name}.part")
-        suffix = file.suffix.lower()
-        try:
-            picture.savefig(beside, format=suffix[1:], dpi=110, metadata=SUFFIXES[suffix])
-            beside.replace(file)
-        except OSError as problem:
-            raise UnusableInputError(
-                f"cannot be written ({problem.strerror})", file=file, key="--output"
-            ) from None
-        finally:
-            beside.unlink(missing_ok=True)
+        save_figure(figure(fit), file)
 
 
 def figure(fit: PowerFit) -> Figure:
